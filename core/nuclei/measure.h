@@ -1,0 +1,36 @@
+/* Aimwell - SPDX-License-Identifier: GPL-3.0-or-later */
+#ifndef AW_NUCLEI_MEASURE_H
+#define AW_NUCLEI_MEASURE_H
+
+#include "geometry/pixelmap.h"
+#include "image/image.h"
+#include "nuclei/nucleus.h"
+#include "nuclei/segment.h"
+
+/* Where an image stands: what turns its pixels into scan um. */
+typedef struct {
+  AwPixelMap map;
+  AwScanPoint stage;
+  AwPixelPoint centre;          /* of the whole frame, frame px */
+  int x_offset_px, y_offset_px; /* of the image's first pixel in its frame (blocks); 0 for whole frames */
+  int frame_width_px, frame_height_px;
+} AwPlacement;
+
+/* For loose images without a pixel size: scan um equal pixels, q = p. */
+AwPlacement aw_placement_loose(int width_px, int height_px);
+
+/**
+ * aw_measure_nuclei: masks, outlines and features of all labels, in label order; ids stay 0.
+ *
+ * info: of the segmentation, or NULL (confidence is then 1). saturation_level: pixel value from which a pixel counts
+ * as saturated; 0 means none. Border is judged against the whole frame. Isolation, area_ratio and the focus flag are
+ * set for this image alone; aw_scan_finish sets them again over a whole dish.
+ * Sources: docs/methods.md, "Features".
+ */
+GPtrArray *aw_measure_nuclei(const AwImage *image, const AwLabels *labels, const AwSegmentInfo *info,
+                             const AwPlacement *placement, double saturation_level, GError **error);
+
+/* Sets isolation, area_ratio and the focus flag of every nucleus from all of them. */
+void aw_measure_relations(GPtrArray *nuclei);
+
+#endif
