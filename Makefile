@@ -18,7 +18,7 @@ OPT_tsan    := -O1 -g -fno-omit-frame-pointer -fsanitize=thread
 OPT_cov     := -O0 -g --coverage
 
 CFLAGS_ALL = -std=c11 -D_GNU_SOURCE -ffp-contract=off -pthread $(WARN) $(OPT_$(MODE)) -DAW_VERSION='"$(VERSION)"' \
-             -Icore -Iapp $(CFLAGS)
+             -Icore -Iapp -Itests $(CFLAGS)
 LDFLAGS_ALL = -pthread $(filter -fsanitize=% --coverage,$(OPT_$(MODE))) $(LDFLAGS)
 OBJ := $(BUILD)/obj/$(MODE)
 BIN := $(BUILD)$(if $(filter-out release,$(MODE)),/$(MODE))
