@@ -24,7 +24,7 @@ gsize aw_csv_n_rows(const AwCsv *csv);          /* data rows, without the header
 gsize aw_csv_n_columns(const AwCsv *csv);       /* fields of the header */
 gsize aw_csv_line(const AwCsv *csv, gsize row); /* line of the file on which data row `row` begins, from 1 */
 const char *aw_csv_heading(const AwCsv *csv, gsize column);
-const char *const *aw_csv_comments(const AwCsv *csv); /* NULL-terminated, without the `#` */
+const char *const *aw_csv_comments(const AwCsv *csv); /* NULL-terminated, without `#` and one blank */
 
 /* Index of the column named `heading`, or -1. */
 int aw_csv_find(const AwCsv *csv, const char *heading);

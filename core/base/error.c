@@ -1,4 +1,4 @@
 /* Aimwell - SPDX-License-Identifier: GPL-3.0-or-later */
 #include "base/error.h"
 
-G_DEFINE_QUARK(aw - error - quark, aw_error)
+G_DEFINE_QUARK(aw_error, aw_error)

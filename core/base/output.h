@@ -14,6 +14,12 @@
  */
 typedef struct AwOutput AwOutput;
 
+/**
+ * Called once by a program before it writes: a file-size limit or a closed pipe then fails the write, which is
+ * reported and cleaned up, instead of killing the process (SIGXFSZ, SIGPIPE).
+ */
+void aw_output_prepare_process(void);
+
 AwOutput *aw_output_open(const char *path, GError **error);
 
 /* The stream to write to; NULL once committed. */
