@@ -133,7 +133,7 @@ static void drawn_pieces(void)
   g_assert_cmpfloat(aw_image_value(image, 5, 5), ==, 105.0);
   drawn_noise(image, 5.0, 7);
   g_autoptr(AwLabels) labels = aw_labels_new(60, 50, NULL);
-  drawn_label(labels, (DrawnBlob){ 29.0, 24.0, 20.0, 20.0, 0.0, 0.0, 0.0 }, 1);
+  drawn_label(labels, (DrawnBlob){ 29.3, 24.1, 20.0, 20.0, 0.0, 0.0, 0.0 }, 1);
   guint32 n = 0;
   for (int i = 0; i < 60 * 50; i++)
     n += labels->label[i];
