@@ -79,13 +79,71 @@ $(BIN)/tests/%: $(OBJ)/tests/unit/%.o $(sup_lib) $(fig_lib) $(view_lib) $(core_l
 	@mkdir -p $(@D); echo "LD $@"
 	$(Q)$(CC) $(LDFLAGS_ALL) -o $@ $< $(sup_lib) $(fig_lib) $(view_lib) $(core_lib) $(fig_libs) $(core_libs)
 
-$(BIN)/bench/%: $(OBJ)/tests/bench/%.o $(sup_lib) $(core_lib)
+$(BIN)/bench/%: $(OBJ)/tests/bench/%.o $(sup_lib) $(fig_lib) $(view_lib) $(core_lib)
+	@mkdir -p $(@D); echo "LD $@"
+	$(Q)$(CC) $(LDFLAGS_ALL) -o $@ $< $(sup_lib) $(view_lib) $(fig_lib) $(core_lib) $(fig_libs) $(core_libs)
+
+# ---- tests: tests/README.md lists the tiers ----
+
+reference_src := $(sort $(wildcard tests/reference/*.c))
+reference_bin := $(patsubst tests/reference/%.c,$(BIN)/reference/%,$(reference_src))
+reference_run := $(sort $(wildcard tests/reference/test_*.py)) $(filter $(BIN)/reference/test_%,$(reference_bin))
+TAP := tests/tools/tap.py --logs $(BIN)/logs $(if $(TOTAL),--total $(TOTAL))
+ASAN_ENV := ASAN_OPTIONS=detect_leaks=1:strict_string_checks=1 UBSAN_OPTIONS=print_stacktrace=1 LSAN_OPTIONS=suppressions=tests/tools/lsan.supp
+
+$(BIN)/reference/%: $(OBJ)/tests/reference/%.o $(sup_lib) $(core_lib)
 	@mkdir -p $(@D); echo "LD $@"
 	$(Q)$(CC) $(LDFLAGS_ALL) -o $@ $< $(sup_lib) $(core_lib) $(core_libs)
 
-.PHONY: unit
-unit: $(unit_bin) ## build and run the unit tests alone
-	@for t in $(unit_bin); do $$t --tap -k >$$t.tap 2>&1 || { cat $$t.tap; exit 1; }; echo "ok  $$t"; done
+.PHONY: unit cli test test-reference asan tsan lint bench
+unit: $(unit_bin) ## the unit tests alone
+	@$(TAP) --args '--tap -k' $(unit_bin)
+
+cli: $(BIN)/aimwell ## the command line tests alone
+	@AIMWELL=$(abspath $(BIN)/aimwell) $(TAP) tests/cli/run.py
+
+test: need-test ## install what is missing, then unit and command line tests
+	@$(MAKE) --no-print-directory all unit-and-cli
+
+.PHONY: unit-and-cli need-build need-test need-check
+unit-and-cli: $(unit_bin) $(BIN)/aimwell
+	@AIMWELL=$(abspath $(BIN)/aimwell) $(TAP) --args '--tap -k' $(unit_bin) tests/cli/run.py
+
+test-reference: $(BIN)/aimwell $(reference_bin) ## outside checks; opendata ones are skipped by name where it is absent
+	@AIMWELL=$(abspath $(BIN)/aimwell) BIN=$(abspath $(BIN)) $(TAP) --timeout 1500 $(reference_run)
+
+asan: ## unit and command line tests under the address and undefined sanitizers
+	@$(ASAN_ENV) $(MAKE) --no-print-directory MODE=asan unit-and-cli
+
+tsan: ## the worker pool and what uses it under the thread sanitizer
+	@$(MAKE) --no-print-directory MODE=tsan tsan-run
+.PHONY: tsan-run
+tsan-run: $(BIN)/tests/test_pool $(BIN)/tests/test_scan
+	@$(TAP) --args '--tap -k' $^
+
+lint: ## layers, sizes, header self-containment, clang-format, clang-tidy
+	@tests/tools/lint.py
+	@tests/tools/headers.sh "$(CC)" "-std=c11 -D_GNU_SOURCE $(WARN) -Icore -Iapp -Itests" "$$(pkg-config --cflags $(PKG_CORE) $(PKG_FIG) $(PKG_GTK))"
+	@clang-format --dry-run --Werror $$(git ls-files 'core/*.[ch]' 'app/*.[ch]' 'tests/*.[ch]' 'sampleimages/*.[ch]')
+	@git ls-files 'core/*.c' 'app/*.c' | xargs -P 2 -n 8 clang-tidy --quiet 2>/dev/null -- -std=c11 -D_GNU_SOURCE -Icore -Iapp \
+	  -DAW_VERSION='"$(VERSION)"' $$(pkg-config --cflags $(PKG_CORE) $(PKG_FIG) $(PKG_GTK)) && echo "clang-tidy: clean"
+
+bench: $(BIN)/aimwell $(bench_bin) ## speed as ratios in one run
+	@for b in $(bench_bin); do echo "== $$(basename $$b)"; AIMWELL=$(abspath $(BIN)/aimwell) $$b || exit 1; done
+
+# ---- what a newcomer types ----
+
+need-build:
+	@app/packaging/need.sh build
+need-test:
+	@app/packaging/need.sh build test
+need-check:
+	@app/packaging/need.sh build test check
+
+.PHONY: demo
+demo: need-build ## install what is missing, build, and run the main job on sampleimages
+	@$(MAKE) --no-print-directory all
+	@app/cli/demo.sh $(BIN)/aimwell sampleimages $(BUILD)/demo
 
 .PHONY: clean
 clean: ## remove what was built
