@@ -1,0 +1,220 @@
+/* Aimwell - SPDX-License-Identifier: GPL-3.0-or-later */
+#include "support/fake_dish.h"
+
+#include <cairo.h>
+#include <math.h>
+
+#include "base/random.h"
+
+#define N_OUTLINE 36
+
+FakeDishSettings fake_dish_defaults(void)
+{
+  return (FakeDishSettings){ .n_across = 3,
+                             .n_down = 3,
+                             .side_px = 1024,
+                             .overview_px = 341,
+                             .overlap_frac = 0.1,
+                             .um_per_px = 0.65,
+                             .camera_rad = 0.07,
+                             .n_nuclei = 500,
+                             .nucleus_um = 16,
+                             .seed = 7 };
+}
+
+static void free_frame(gpointer p)
+{
+  AwFrame *frame = p;
+  g_clear_pointer(&frame->overview, g_bytes_unref);
+  g_free(frame);
+}
+
+static void free_nucleus(gpointer p)
+{
+  AwNucleus *nucleus = p;
+  g_free(nucleus->outline);
+  g_free(nucleus);
+}
+
+AwNucleus *fake_dish_add(FakeDish *dish, AwScanPoint q, double major_um, double minor_um, double angle_rad)
+{
+  AwNucleus *n = g_new0(AwNucleus, 1);
+  n->id = dish->nuclei->len + 1;
+  n->centroid = q;
+  n->area = G_PI / 4 * major_um * minor_um;
+  n->diameter = sqrt(major_um * minor_um);
+  n->major = major_um;
+  n->minor = minor_um;
+  n->angle_rad = angle_rad;
+  n->n_outline = N_OUTLINE;
+  n->outline = g_new(AwScanPoint, N_OUTLINE);
+  for (int i = 0; i < N_OUTLINE; i++) {
+    double t = 2 * G_PI * i / N_OUTLINE, a = major_um / 2 * cos(t), b = minor_um / 2 * sin(t);
+    n->outline[i] = (AwScanPoint){ q.x_um + a * cos(angle_rad) - b * sin(angle_rad),
+                                   q.y_um + a * sin(angle_rad) + b * cos(angle_rad) };
+  }
+  g_ptr_array_add(dish->nuclei, n);
+  return n;
+}
+
+static cairo_status_t collect(void *closure, const unsigned char *data, unsigned int length)
+{
+  g_byte_array_append(closure, data, length);
+  return CAIRO_STATUS_SUCCESS;
+}
+
+/* Brightens one pixel by every nucleus near it; x, y in frame px. */
+static void paint_nucleus(const FakeDish *dish, const AwFrame *frame, const AwNucleus *n, float *grey, int side)
+{
+  AwPixelPoint c = aw_frame_centre(frame->width_px, frame->height_px);
+  AwPixelPoint p = aw_scan_to_pixel(&dish->map, frame->stage, c, n->centroid);
+  double k = (double)frame->width_px / side, reach = (n->major / aw_pixel_map_scale(&dish->map) + 3 * k) / k;
+  double mx = (p.x_px + 0.5) / k - 0.5, my = (p.y_px + 0.5) / k - 0.5,
+         level = 90 + 110 * fmod((double)n->id * 0.618, 1);
+  for (int y = MAX(0, (int)(my - reach)); y < MIN(side, my + reach); y++)
+    for (int x = MAX(0, (int)(mx - reach)); x < MIN(side, mx + reach); x++) {
+      AwPixelPoint at = { (x + 0.5) * k - 0.5, (y + 0.5) * k - 0.5 };
+      AwScanPoint q = aw_pixel_to_scan(&dish->map, frame->stage, c, at);
+      double dx = q.x_um - n->centroid.x_um, dy = q.y_um - n->centroid.y_um;
+      double a = (dx * cos(n->angle_rad) + dy * sin(n->angle_rad)) / (n->major / 2);
+      double b = (-dx * sin(n->angle_rad) + dy * cos(n->angle_rad)) / (n->minor / 2);
+      double value = level / (1 + exp((hypot(a, b) - 1) * 12));
+      grey[y * side + x] = (float)MAX(grey[y * side + x], value);
+    }
+}
+
+static GBytes *picture(const FakeDish *dish, const AwFrame *frame, int side, guint64 item)
+{
+  AwRandom r = aw_random_stream(99, item);
+  g_autofree float *grey = g_new0(float, (gsize)side *(gsize)side);
+  for (guint i = 0; i < dish->nuclei->len; i++)
+    paint_nucleus(dish, frame, dish->nuclei->pdata[i], grey, side);
+  cairo_surface_t *surface = cairo_image_surface_create(CAIRO_FORMAT_RGB24, side, side);
+  for (int y = 0; y < side; y++)
+    for (int x = 0; x < side; x++) {
+      guint32 v = (guint32)CLAMP(20 + grey[y * side + x] + 4 * aw_random_normal(&r), 0, 255);
+      unsigned char *row =
+          cairo_image_surface_get_data(surface) + (gsize)y * (gsize)cairo_image_surface_get_stride(surface);
+      ((guint32 *)(void *)row)[x] = v << 16 | v << 8 | v;
+    }
+  cairo_surface_mark_dirty(surface);
+  GByteArray *bytes = g_byte_array_new();
+  cairo_surface_write_to_png_stream(surface, collect, bytes);
+  cairo_surface_destroy(surface);
+  return g_byte_array_free_to_bytes(bytes);
+}
+
+void fake_dish_paint(FakeDish *dish, int overview_px)
+{
+  for (guint i = 0; i < dish->frames->len; i++) {
+    AwFrame *frame = dish->frames->pdata[i];
+    g_clear_pointer(&frame->overview, g_bytes_unref);
+    frame->overview = picture(dish, frame, overview_px, i);
+  }
+}
+
+static void add_frames(FakeDish *dish, const FakeDishSettings *s)
+{
+  double step = s->side_px * s->um_per_px * (1 - s->overlap_frac);
+  for (int j = 0; j < s->n_down; j++)
+    for (int i = 0; i < s->n_across; i++) {
+      AwFrame *frame = g_new0(AwFrame, 1);
+      frame->width_px = frame->height_px = s->side_px;
+      frame->channel = -1;
+      frame->stage = (AwScanPoint){ 12000 + i * step, -4000 + j * step };
+      g_ptr_array_add(dish->frames, frame);
+    }
+}
+
+static gboolean is_free(const FakeDish *dish, AwScanPoint q, double distance)
+{
+  for (guint i = 0; i < dish->nuclei->len; i++) {
+    const AwNucleus *n = dish->nuclei->pdata[i];
+    if (hypot(n->centroid.x_um - q.x_um, n->centroid.y_um - q.y_um) < distance)
+      return FALSE;
+  }
+  return TRUE;
+}
+
+static void scatter(FakeDish *dish, const FakeDishSettings *s)
+{
+  AwRandom r = aw_random_stream(s->seed, 0);
+  double step = s->side_px * s->um_per_px * (1 - s->overlap_frac);
+  gboolean crowded = s->n_nuclei > 5000; /* testing every pair would take too long */
+  for (gsize tries = 0; dish->nuclei->len < s->n_nuclei && tries < 50 * s->n_nuclei; tries++) {
+    AwScanPoint q = { 12000 + (aw_random_unit(&r) * s->n_across - 0.5) * step,
+                      -4000 + (aw_random_unit(&r) * s->n_down - 0.5) * step };
+    double major = s->nucleus_um * (0.85 + 0.5 * aw_random_unit(&r)), angle = G_PI * aw_random_unit(&r);
+    double minor = major * (0.65 + 0.3 * aw_random_unit(&r));
+    if (crowded || is_free(dish, q, 1.15 * s->nucleus_um))
+      fake_dish_add(dish, q, major, minor, angle);
+  }
+}
+
+static void decide(FakeDish *dish, guint64 seed)
+{
+  AwRandom r = aw_random_stream(seed, 1);
+  dish->state = g_new0(AwState, dish->nuclei->len + 1);
+  for (guint i = 0; i < dish->nuclei->len; i++) {
+    double u = aw_random_unit(&r);
+    dish->state[i] = u < 0.45   ? AW_STATE_ACCEPTED
+                     : u < 0.65 ? AW_STATE_PROPOSED
+                     : u < 0.75 ? AW_STATE_REJECTED
+                                : AW_STATE_FOUND;
+  }
+}
+
+static gint64 nearest(const FakeDish *dish, const gboolean *done, AwScanPoint at)
+{
+  gint64 best = -1;
+  double least = INFINITY;
+  for (guint i = 0; i < dish->nuclei->len; i++) {
+    const AwNucleus *n = dish->nuclei->pdata[i];
+    double d = hypot(n->centroid.x_um - at.x_um, n->centroid.y_um - at.y_um);
+    if (dish->state[i] == AW_STATE_ACCEPTED && !done[i] && d < least) {
+      least = d;
+      best = i;
+    }
+  }
+  return best;
+}
+
+static void order(FakeDish *dish)
+{
+  g_autofree gboolean *done = g_new0(gboolean, dish->nuclei->len + 1);
+  AwScanPoint at = { 0, 0 };
+  for (gint64 i = nearest(dish, done, at); i >= 0; i = nearest(dish, done, at)) {
+    const AwNucleus *n = dish->nuclei->pdata[i];
+    done[i] = TRUE;
+    at = n->centroid;
+    g_array_append_val(dish->tour, n->id);
+  }
+}
+
+FakeDish *fake_dish_new(const FakeDishSettings *s)
+{
+  FakeDish *dish = g_new0(FakeDish, 1);
+  double c = s->um_per_px * cos(s->camera_rad), n = s->um_per_px * sin(s->camera_rad), m = s->mirrored ? -1 : 1;
+  dish->map = (AwPixelMap){ { c * m, -n, n * m, c }, AW_ORIGIN_FITTED, 0.2 };
+  dish->frames = g_ptr_array_new_with_free_func(free_frame);
+  dish->nuclei = g_ptr_array_new_with_free_func(free_nucleus);
+  dish->tour = g_array_new(FALSE, FALSE, sizeof(gint64));
+  add_frames(dish, s);
+  scatter(dish, s);
+  if (s->overview_px > 0)
+    fake_dish_paint(dish, s->overview_px);
+  decide(dish, s->seed);
+  order(dish);
+  return dish;
+}
+
+void fake_dish_free(FakeDish *dish)
+{
+  if (!dish)
+    return;
+  g_ptr_array_unref(dish->frames);
+  g_ptr_array_unref(dish->nuclei);
+  g_array_unref(dish->tour);
+  g_free(dish->state);
+  g_free(dish);
+}
