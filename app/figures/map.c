@@ -2,7 +2,9 @@
 #include "figures/map.h"
 
 #include <math.h>
+#include <string.h>
 
+#include "base/text.h"
 #include "figures/canvas.h"
 #include "figures/label.h"
 #include "figures/map_parts.h"
@@ -103,8 +105,9 @@ static void draw_dish(const AwMapPage *page)
   cairo_rectangle(page->cr, page->x, page->y, page->width, page->height);
   cairo_clip(page->cr);
   aw_map_draw_pictures(page);
+  aw_map_draw_tour_line(page);
   aw_map_draw_nuclei(page);
-  aw_map_draw_tour(page);
+  aw_map_draw_tour_signs(page);
   cairo_restore(page->cr);
 }
 
@@ -116,8 +119,10 @@ static void draw_scale(const AwMapPage *page)
   double um_per_px = hypot(a.xx, a.yx);
   aw_scalebar_draw(page->cr, page->x, y, page->width / 3, page->scale / um_per_px, u);
   AwLabel label = { .size = 13.5 * u, .ink = aw_ink_faint, .align = AW_ALIGN_RIGHT, .max_width = page->width * 0.6 };
-  g_autofree char *size = aw_label_length(aw_pixel_map_scale(&page->content->map));
-  g_autofree char *text = g_strdup_printf("%s per pixel, %s", size, aw_origin_name(page->content->map.origin));
+  g_autofree char *size = aw_text_from_double(aw_pixel_map_scale(&page->content->map), 4);
+  if (g_str_has_suffix(size, "0"))
+    size[strlen(size) - 1] = '\0';
+  g_autofree char *text = g_strdup_printf("%s µm per pixel, %s", size, aw_origin_name(page->content->map.origin));
   aw_label_draw(page->cr, &label, text, page->x + page->width, y);
 }
 

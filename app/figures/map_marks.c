@@ -6,9 +6,9 @@
 #include "figures/map_parts.h"
 #include "figures/scalebar.h"
 
-#define OUTLINE_FROM 6.5 /* typical diameter from which outlines are drawn, u; below it marks stand in */
-#define GLYPH_FROM 15.0  /* diameter from which an outline carries its state's glyph, u */
-#define CASING_FROM 9.0  /* diameter from which outlines get a dark seam, u */
+#define OUTLINE_FROM 5.0 /* typical diameter from which outlines are drawn, u; below it marks stand in */
+#define GLYPH_FROM 6.0   /* diameter from which an outline carries its state's glyph, u */
+#define CASING_FROM 7.0  /* diameter from which outlines get a dark seam, u */
 #define MAX_ARROWS 160
 #define CHUNK 48 /* stops per stroke: cairo's cost grows fast with the crossings inside one path */
 
@@ -105,7 +105,7 @@ static gboolean outline_path(const AwMapPage *page, const AwNucleus *nucleus)
 
 static void draw_outline(const AwMapPage *page, const AwNucleus *nucleus, const AwLook *look)
 {
-  double unit = MIN(page->u, page->u * page->nucleus_size / (14 * page->u) + 0.25); /* thinner when nuclei are small */
+  double unit = CLAMP(page->nucleus_size / 12, 0.6 * page->u, page->u); /* thinner when nuclei are small */
   if (!outline_path(page, nucleus))
     return;
   if (page->nucleus_size >= CASING_FROM * page->u) {
@@ -146,7 +146,7 @@ static void draw_nucleus(const AwMapPage *page, const AwNucleus *nucleus, AwStat
   }
   draw_outline(page, nucleus, look);
   if (page->nucleus_size >= GLYPH_FROM * page->u)
-    draw_glyph(page, nucleus, look, CLAMP(page->nucleus_size * 0.13, 2 * page->u, 7 * page->u));
+    draw_glyph(page, nucleus, look, CLAMP(page->nucleus_size * 0.18, 1.6 * page->u, 7 * page->u));
 }
 
 void aw_map_draw_nuclei(const AwMapPage *page)
@@ -247,14 +247,18 @@ static void number_stops(const AwMapPage *page)
   }
 }
 
-void aw_map_draw_tour(const AwMapPage *page)
+void aw_map_draw_tour_line(const AwMapPage *page)
+{
+  double width = CLAMP(page->u * 60 / sqrt(page->n_stops + 1.0), 0.7 * page->u, 1.5 * page->u);
+  stroke_tour(page, width * 2.2, aw_ink_casing);
+  stroke_tour(page, width, aw_ink_tour);
+}
+
+void aw_map_draw_tour_signs(const AwMapPage *page)
 {
   double u = page->u;
   if (page->n_stops == 0)
     return;
-  double width = page->n_stops > 4000 ? 1.1 * u : 1.7 * u;
-  stroke_tour(page, width + 2 * u, aw_ink_casing);
-  stroke_tour(page, width, aw_ink_tour);
   draw_arrows(page);
   number_stops(page);
   if (page->n_stops > 1) {

@@ -35,7 +35,8 @@ AwState aw_map_page_state(const AwMapPage *page, guint nucleus);
 /* Each fills its part of the panel. */
 void aw_map_draw_pictures(const AwMapPage *page);
 void aw_map_draw_nuclei(const AwMapPage *page);
-void aw_map_draw_tour(const AwMapPage *page);
+void aw_map_draw_tour_line(const AwMapPage *page);  /* beneath the nuclei */
+void aw_map_draw_tour_signs(const AwMapPage *page); /* arrows, start, end and numbers, above them */
 
 /* The explanations beside the panel: a column at (x, y), or a row across `width` when `in_row`. */
 void aw_map_draw_side(const AwMapPage *page, double x, double y, double width, gboolean in_row);

@@ -157,8 +157,9 @@ static double next_block(const AwMapPage *page, double x, double y, double width
   gboolean pictures = any_picture(page->content->frames);
   double used = 0;
   if (text) {
+    AwLabel label = { .size = TEXT * page->u, .ink = aw_ink_text, .max_width = width, .max_lines = 4 };
     used += heading(page, x, y, width, "Next step");
-    used += paragraph(page, x, y + used, width, text);
+    used += aw_label_draw(page->cr, &label, text, x, y + used) + 8 * page->u;
   }
   if (!pictures && page->content->frames && page->content->frames->len > 0)
     used +=
