@@ -51,13 +51,13 @@ Q := $(if $(V),,@)
 .PHONY: all
 all: $(if $(cli_src),$(BIN)/aimwell) $(if $(viewer_src),$(BIN)/aimwell-viewer) ## build everything into build/
 
-$(BIN)/aimwell: $(call objs,$(cli_src)) $(fig_lib) $(view_lib) $(core_lib)
+$(BIN)/aimwell: $(call objs,$(cli_src)) $(view_lib) $(fig_lib) $(core_lib)
 	@mkdir -p $(@D); echo "LD $@"
-	$(Q)$(CC) $(LDFLAGS_ALL) -o $@ $(filter %.o,$^) $(fig_lib) $(view_lib) $(core_lib) $(fig_libs) $(core_libs)
+	$(Q)$(CC) $(LDFLAGS_ALL) -o $@ $(filter %.o,$^) $(view_lib) $(fig_lib) $(core_lib) $(fig_libs) $(core_libs)
 
-$(BIN)/aimwell-viewer: $(call objs,$(viewer_src)) $(fig_lib) $(view_lib) $(core_lib)
+$(BIN)/aimwell-viewer: $(call objs,$(viewer_src)) $(view_lib) $(fig_lib) $(core_lib)
 	@mkdir -p $(@D); echo "LD $@"
-	$(Q)$(CC) $(LDFLAGS_ALL) -o $@ $(filter %.o,$^) $(fig_lib) $(view_lib) $(core_lib) $(gtk_libs) $(fig_libs) $(core_libs)
+	$(Q)$(CC) $(LDFLAGS_ALL) -o $@ $(filter %.o,$^) $(view_lib) $(fig_lib) $(core_lib) $(gtk_libs) $(fig_libs) $(core_libs)
 
 $(core_lib): $(call objs,$(core_src))
 $(fig_lib): $(call objs,$(fig_src))
@@ -75,11 +75,11 @@ $(OBJ)/%.o: %.c
 	@mkdir -p $(@D); echo "CC $<"
 	$(Q)$(CC) $(CFLAGS_ALL) $(pkg_cflags) -MMD -MP -c -o $@ $<
 
-$(BIN)/tests/%: $(OBJ)/tests/unit/%.o $(sup_lib) $(fig_lib) $(view_lib) $(core_lib)
+$(BIN)/tests/%: $(OBJ)/tests/unit/%.o $(sup_lib) $(view_lib) $(fig_lib) $(core_lib)
 	@mkdir -p $(@D); echo "LD $@"
-	$(Q)$(CC) $(LDFLAGS_ALL) -o $@ $< $(sup_lib) $(fig_lib) $(view_lib) $(core_lib) $(fig_libs) $(core_libs)
+	$(Q)$(CC) $(LDFLAGS_ALL) -o $@ $< $(sup_lib) $(view_lib) $(fig_lib) $(core_lib) $(fig_libs) $(core_libs)
 
-$(BIN)/bench/%: $(OBJ)/tests/bench/%.o $(sup_lib) $(fig_lib) $(view_lib) $(core_lib)
+$(BIN)/bench/%: $(OBJ)/tests/bench/%.o $(sup_lib) $(view_lib) $(fig_lib) $(core_lib)
 	@mkdir -p $(@D); echo "LD $@"
 	$(Q)$(CC) $(LDFLAGS_ALL) -o $@ $< $(sup_lib) $(view_lib) $(fig_lib) $(core_lib) $(fig_libs) $(core_libs)
 
