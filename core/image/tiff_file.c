@@ -1,0 +1,134 @@
+/* Aimwell - SPDX-License-Identifier: GPL-3.0-or-later */
+#include "image/tiff_file.h"
+
+#include <errno.h>
+#include <fcntl.h>
+#include <string.h>
+#include <sys/stat.h>
+#include <unistd.h>
+
+void aw_tiff_log_clear(AwTiffLog *log)
+{
+  g_clear_pointer(&log->complaint, g_free);
+}
+
+static void keep_first(AwTiffLog *log, const char *format, va_list args)
+{
+  if (log->complaint)
+    return;
+  g_autofree char *text = g_strdup_vprintf(format, args);
+  log->complaint = g_utf8_make_valid(g_strstrip(text), -1);
+}
+
+static int on_error(TIFF *tif, void *data, const char *module, const char *format, va_list args)
+{
+  (void)tif;
+  (void)module;
+  keep_first(data, format, args);
+  return 1;
+}
+
+/* A tag that lies beyond the file's end is only a warning to libtiff, yet the page would lose its meaning. */
+static int on_warning(TIFF *tif, void *data, const char *module, const char *format, va_list args)
+{
+  (void)tif;
+  (void)module;
+  if (g_str_has_prefix(format, "IO error during reading"))
+    keep_first(data, format, args);
+  return 1;
+}
+
+TIFFOpenOptions *aw_tiff_options(AwTiffLog *log)
+{
+  TIFFOpenOptions *options = TIFFOpenOptionsAlloc();
+  TIFFOpenOptionsSetMaxSingleMemAlloc(options, AW_TIFF_MAX_ALLOC);
+  TIFFOpenOptionsSetErrorHandlerExtR(options, on_error, log);
+  TIFFOpenOptionsSetWarningHandlerExtR(options, on_warning, log);
+  return options;
+}
+
+gboolean aw_tiff_fail(const AwTiffFile *file, AwErrorCode code, GError **error, const char *format, ...)
+{
+  va_list args;
+  va_start(args, format);
+  g_autofree char *text = g_strdup_vprintf(format, args);
+  va_end(args);
+  const char *why = file->log.complaint;
+  g_set_error(error, AW_ERROR, code, "%s %s%s%s", file->place, text, why ? ": " : "", why ? why : "");
+  return FALSE;
+}
+
+static int open_regular(const char *path, gint64 *n_bytes, GError **error)
+{
+  int fd = open(path, O_RDONLY | O_CLOEXEC | O_NONBLOCK | O_NOCTTY);
+  struct stat about;
+  if (fd >= 0 && fstat(fd, &about) == 0 && S_ISREG(about.st_mode)) {
+    *n_bytes = about.st_size;
+    return fd;
+  }
+  int cause = fd < 0 ? errno : S_ISDIR(about.st_mode) ? EISDIR : ESPIPE;
+  if (fd >= 0)
+    close(fd);
+  g_set_error(error, AW_ERROR, cause == ENOENT ? AW_ERROR_NOT_FOUND : AW_ERROR_IO, "%s cannot be read: %s", path,
+              g_strerror(cause));
+  return -1;
+}
+
+/* libtiff's own count stops quietly at a broken link of the chain of directories; its complaint tells. */
+static gboolean count_directories(AwTiffFile *file, GError **error)
+{
+  aw_tiff_log_clear(&file->log);
+  file->n_directories = (int)MIN(TIFFNumberOfDirectories(file->tif), (tdir_t)G_MAXINT);
+  if (!file->log.complaint)
+    return TRUE;
+  return aw_tiff_fail(file, AW_ERROR_FORMAT, error, "is damaged: its chain of pages breaks off after %d",
+                      file->n_directories);
+}
+
+AwTiffFile *aw_tiff_file_open(const char *path, GError **error)
+{
+  g_autoptr(AwTiffFile) file = g_new0(AwTiffFile, 1);
+  file->path = g_strdup(path);
+  file->place = g_strdup(path);
+  int fd = open_regular(path, &file->n_bytes, error);
+  if (fd < 0)
+    return NULL;
+  TIFFOpenOptions *options = aw_tiff_options(&file->log);
+  /* No memory map ("m"): a file that shrinks while it is read must be an error, not a signal. */
+  file->tif = TIFFFdOpenExt(fd, path, "rm", options);
+  TIFFOpenOptionsFree(options);
+  if (!file->tif) {
+    close(fd);
+    aw_tiff_fail(file, AW_ERROR_FORMAT, error, "is damaged: its first page cannot be read");
+    return NULL;
+  }
+  if (file->log.complaint) {
+    aw_tiff_fail(file, AW_ERROR_FORMAT, error, "is damaged or cut off");
+    return NULL;
+  }
+  return count_directories(file, error) ? g_steal_pointer(&file) : NULL;
+}
+
+void aw_tiff_file_free(AwTiffFile *file)
+{
+  if (!file)
+    return;
+  if (file->tif)
+    TIFFClose(file->tif);
+  aw_tiff_log_clear(&file->log);
+  g_free(file->place);
+  g_free(file->path);
+  g_free(file);
+}
+
+gboolean aw_tiff_file_choose(AwTiffFile *file, int directory, int page, GError **error)
+{
+  g_free(file->place);
+  file->place = g_strdup_printf("%s, page %d", file->path, page);
+  aw_tiff_log_clear(&file->log);
+  if (TIFFCurrentDirectory(file->tif) == (tdir_t)directory)
+    return TRUE;
+  if (!TIFFSetDirectory(file->tif, (tdir_t)directory) || file->log.complaint)
+    return aw_tiff_fail(file, AW_ERROR_FORMAT, error, "is damaged: its directory cannot be read");
+  return TRUE;
+}
