@@ -34,15 +34,21 @@ const char *aw_record_warning(const AwRecord *record);
 /* Runs SQLite's integrity and foreign-key checks. */
 gboolean aw_record_check(AwRecord *record, GError **error);
 
-/* Begins one user action; `operator` and `action` (a plain sentence) go into the journal on commit. */
+/* Between these two every read sees one state of the record. Keep it short: a writer waits for it with its commit. */
+gboolean aw_record_read_begin(AwRecord *record, GError **error);
+void aw_record_read_end(AwRecord *record);
+
+/* Begins one user action; `operator_name` and `action` (a plain sentence) go into the journal on commit. All setters
+ * below ask for a begun action. A commit that fails has rolled the action back. */
 gboolean aw_record_begin(AwRecord *record, const char *operator_name, GError **error);
 gboolean aw_record_commit(AwRecord *record, const char *action, GError **error);
 void aw_record_rollback(AwRecord *record);
 
-/* Undoes the newest action that is not itself undone, as a new journalled action. *what gets its text (g_free). */
+/* Undoes the newest standing action that changed data, as a new journalled action; the first action, which made the
+ * record, is AW_ERROR_STATE. *what (may be NULL) gets the action's text; g_free. */
 gboolean aw_record_undo(AwRecord *record, const char *operator_name, char **what, GError **error);
 
-/* Applies again the newest undone action; AW_ERROR_STATE when there is none or a newer action stands. */
+/* Applies again the action undone last; AW_ERROR_STATE when there is none or another was done since. */
 gboolean aw_record_redo(AwRecord *record, const char *operator_name, char **what, GError **error);
 
 typedef struct {

@@ -1,0 +1,34 @@
+/* Aimwell - SPDX-License-Identifier: GPL-3.0-or-later */
+#ifndef AW_TESTS_DISH_H
+#define AW_TESTS_DISH_H
+
+#include "record/record.h"
+
+/* Small invented dish records for tests. All of it is deterministic. */
+
+/* A new empty folder, removed with all it holds by aw_test_folder_remove. Free the path with g_free. */
+char *aw_test_folder_new(void);
+void aw_test_folder_remove(const char *folder);
+
+/* n frames in a row, 100 um apart, files "images/frame_N.tif" with made-up hashes. */
+GPtrArray *aw_test_frames(guint n);
+
+/* n nuclei with ids first_id ..., spread over n_frames frames, each with a disc-like mask and an outline. */
+GPtrArray *aw_test_nuclei(guint n, gint64 first_id, int n_frames);
+
+/* FOLDER/dish.dish with 3 frames and a pixel map, one action. Aborts on error. */
+AwRecord *aw_test_dish_new(const char *folder);
+
+/* Stores n nuclei (ids from 1) as one action. */
+void aw_test_dish_segment(AwRecord *record, guint n);
+
+/* Accepts one nucleus as one action, journalled as "accept ID". */
+void aw_test_dish_accept(AwRecord *record, gint64 id);
+
+/* Everything undo covers, as text: two equal texts mean equal data. Free with g_free. */
+char *aw_test_dish_dump(AwRecord *record);
+
+/* Asserts an error of the AW_ERROR domain with this code whose message contains `text`, and clears it. */
+void aw_test_assert_error(GError **error, int code, const char *text);
+
+#endif
