@@ -2,25 +2,6 @@
 #include "support/dish.h"
 
 #include <math.h>
-#include <string.h>
-
-#include "base/error.h"
-
-char *aw_test_folder_new(void)
-{
-  GError *error = NULL;
-  char *folder = g_dir_make_tmp("aimwell-test-XXXXXX", &error);
-  g_assert_no_error(error);
-  return folder;
-}
-
-void aw_test_folder_remove(const char *folder)
-{
-  char *argv[] = { g_strdup("rm"), g_strdup("-rf"), g_strdup("--"), g_strdup(folder), NULL };
-  g_spawn_sync(NULL, argv, NULL, G_SPAWN_SEARCH_PATH, NULL, NULL, NULL, NULL, NULL, NULL);
-  for (int i = 0; argv[i]; i++)
-    g_free(argv[i]);
-}
 
 GPtrArray *aw_test_frames(guint n)
 {
@@ -180,12 +161,4 @@ char *aw_test_dish_dump(AwRecord *record)
   dump_nuclei(record, text);
   dump_choices(record, text);
   return g_string_free(text, FALSE);
-}
-
-void aw_test_assert_error(GError **error, int code, const char *text)
-{
-  g_assert_error(*error, AW_ERROR, code);
-  if (!strstr((*error)->message, text))
-    g_error("message '%s' does not contain '%s'", (*error)->message, text);
-  g_clear_error(error);
 }

@@ -6,10 +6,6 @@
 
 /* Small invented dish records for tests. All of it is deterministic. */
 
-/* A new empty folder, removed with all it holds by aw_test_folder_remove. Free the path with g_free. */
-char *aw_test_folder_new(void);
-void aw_test_folder_remove(const char *folder);
-
 /* n frames in a row, 100 um apart, files "images/frame_N.tif" with made-up hashes. */
 GPtrArray *aw_test_frames(guint n);
 
@@ -27,8 +23,5 @@ void aw_test_dish_accept(AwRecord *record, gint64 id);
 
 /* Everything undo covers, as text: two equal texts mean equal data. Free with g_free. */
 char *aw_test_dish_dump(AwRecord *record);
-
-/* Asserts an error of the AW_ERROR domain with this code whose message contains `text`, and clears it. */
-void aw_test_assert_error(GError **error, int code, const char *text);
 
 #endif

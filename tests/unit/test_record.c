@@ -5,9 +5,9 @@
 #include <sys/stat.h>
 #include <unistd.h>
 
-#include "support/dish.h"
-#include "base/error.h"
 #include "record/private.h"
+#include "support/check.h"
+#include "support/dish.h"
 
 typedef struct {
   char *folder, *path;
@@ -16,15 +16,14 @@ typedef struct {
 static void set_up(Place *place, gconstpointer ignored)
 {
   (void)ignored;
-  place->folder = aw_test_folder_new();
+  place->folder = aw_scratch_new();
   place->path = g_build_filename(place->folder, "dish.dish", NULL);
 }
 
 static void tear_down(Place *place, gconstpointer ignored)
 {
   (void)ignored;
-  aw_test_folder_remove(place->folder);
-  g_free(place->folder);
+  aw_scratch_remove(place->folder);
   g_free(place->path);
 }
 
@@ -104,14 +103,14 @@ static void test_create_refused(Place *place, gconstpointer ignored)
   GError *error = NULL;
   write_file(place->path, "precious", 8);
   g_assert_null(aw_record_create(place->path, &error));
-  aw_test_assert_error(&error, AW_ERROR_STATE, "already exists");
+  aw_check_error(&error, AW_ERROR_STATE, "already exists");
   g_autofree char *nowhere = g_build_filename(place->folder, "no", "dish.dish", NULL);
   g_assert_null(aw_record_create(nowhere, &error));
-  aw_test_assert_error(&error, AW_ERROR_NOT_FOUND, "there is no folder");
+  aw_check_error(&error, AW_ERROR_NOT_FOUND, "there is no folder");
   g_autofree char *link = g_build_filename(place->folder, "dangling", NULL);
   g_assert_cmpint(symlink("nothing", link), ==, 0);
   g_assert_null(aw_record_create(link, &error));
-  aw_test_assert_error(&error, AW_ERROR_STATE, "already exists");
+  aw_check_error(&error, AW_ERROR_STATE, "already exists");
   g_assert_cmpuint(n_files(place->folder), ==, 2);
 }
 
@@ -124,11 +123,11 @@ static void test_create_overtaken(Place *place, gconstpointer ignored)
   g_assert_true(aw_record_begin(record, "ada", &error));
   write_file(place->path, "precious", 8);
   g_assert_false(aw_record_commit(record, "start", &error));
-  aw_test_assert_error(&error, AW_ERROR_STATE, "appeared meanwhile");
+  aw_check_error(&error, AW_ERROR_STATE, "appeared meanwhile");
   g_assert_null(aw_record_fact(record, "name", &error));
-  aw_test_assert_error(&error, AW_ERROR_STATE, "no longer open");
+  aw_check_error(&error, AW_ERROR_STATE, "no longer open");
   g_assert_false(aw_record_begin(record, "ada", &error));
-  aw_test_assert_error(&error, AW_ERROR_STATE, "no longer open");
+  aw_check_error(&error, AW_ERROR_STATE, "no longer open");
   aw_record_free(record);
   g_autofree char *bytes = NULL;
   g_assert_true(g_file_get_contents(place->path, &bytes, NULL, NULL));
@@ -229,7 +228,7 @@ static void test_facts(Place *place, gconstpointer ignored)
   g_assert_null(aw_record_fact(record, "third", &error));
   g_assert_no_error(error);
   g_assert_false(aw_record_fact_double(record, "name", 0, &value, &error));
-  aw_test_assert_error(&error, AW_ERROR_FORMAT, "fact name");
+  aw_check_error(&error, AW_ERROR_FORMAT, "fact name");
 }
 
 static void test_no_pixel_map(Place *place, gconstpointer ignored)
@@ -239,7 +238,7 @@ static void test_no_pixel_map(Place *place, gconstpointer ignored)
   AwPixelMap map;
   g_autoptr(AwRecord) record = aw_record_create(place->path, &error);
   g_assert_false(aw_record_pixel_map(record, &map, &error));
-  aw_test_assert_error(&error, AW_ERROR_STATE, "no pixel map yet");
+  aw_check_error(&error, AW_ERROR_STATE, "no pixel map yet");
 }
 
 static void test_read_only_mode(Place *place, gconstpointer ignored)
@@ -249,9 +248,9 @@ static void test_read_only_mode(Place *place, gconstpointer ignored)
   aw_record_free(aw_test_dish_new(place->folder));
   g_autoptr(AwRecord) record = aw_record_open(place->path, AW_RECORD_READ, &error);
   g_assert_false(aw_record_begin(record, "ada", &error));
-  aw_test_assert_error(&error, AW_ERROR_STATE, "open for reading only");
+  aw_check_error(&error, AW_ERROR_STATE, "open for reading only");
   g_assert_false(aw_record_undo(record, "ada", NULL, &error));
-  aw_test_assert_error(&error, AW_ERROR_STATE, "open for reading only");
+  aw_check_error(&error, AW_ERROR_STATE, "open for reading only");
   g_assert_true(aw_record_read_begin(record, &error));
   g_autofree char *name = aw_record_fact(record, "name", &error);
   g_assert_cmpstr(name, ==, "dish");
@@ -263,7 +262,7 @@ static void expect_refusal(const char *path, int code, const char *text)
   GError *error = NULL;
   for (int mode = AW_RECORD_READ; mode <= AW_RECORD_WRITE; mode++) {
     g_assert_null(aw_record_open(path, (AwRecordMode)mode, &error));
-    aw_test_assert_error(&error, code, text);
+    aw_check_error(&error, code, text);
   }
 }
 
@@ -330,9 +329,9 @@ static void test_damaged(Place *place, gconstpointer ignored)
   g_autoptr(AwRecord) again = aw_record_open(place->path, AW_RECORD_READ, &error);
   g_assert_no_error(error);
   g_assert_false(aw_record_check(again, &error));
-  aw_test_assert_error(&error, AW_ERROR_FORMAT, "dish.dish");
+  aw_check_error(&error, AW_ERROR_FORMAT, "dish.dish");
   g_assert_null(aw_record_nuclei(again, TRUE, &error));
-  aw_test_assert_error(&error, AW_ERROR_FORMAT, "malformed");
+  aw_check_error(&error, AW_ERROR_FORMAT, "malformed");
 }
 
 static void test_damaged_header(Place *place, gconstpointer ignored)
@@ -354,7 +353,7 @@ static void test_foreign_keys_checked(Place *place, gconstpointer ignored)
   tamper(place->path, "DELETE FROM nucleus WHERE id = 2");
   g_autoptr(AwRecord) again = aw_record_open(place->path, AW_RECORD_READ, &error);
   g_assert_false(aw_record_check(again, &error));
-  aw_test_assert_error(&error, AW_ERROR_FORMAT, "row 2 of table decision");
+  aw_check_error(&error, AW_ERROR_FORMAT, "row 2 of table decision");
 }
 
 static void test_share_names(void)
