@@ -1,0 +1,167 @@
+/* Aimwell - SPDX-License-Identifier: GPL-3.0-or-later */
+#include "nuclei/segment_pieces.h"
+
+#include <math.h>
+#include <string.h>
+
+#include "image/distance.h"
+#include "image/smooth.h"
+#include "image/watershed.h"
+
+static void take_runs(AwCluster *c, const AwMaskRuns *runs, const gsize *first, gsize n)
+{
+  for (gsize i = 0; i < n; i++) {
+    const AwMaskRun *r = &runs->run[first[i]];
+    memset(c->mask + (gsize)(r->y - c->box.y0) * (gsize)c->width + (r->x0 - c->box.x0), 1, (gsize)(r->x1 - r->x0));
+  }
+}
+
+static void take_values(AwCluster *c, const AwSegmentWork *w)
+{
+  for (int y = 0; y < c->height; y++) {
+    gsize at = (gsize)y * (gsize)c->width;
+    const float *g = aw_plane_row(w->smooth, c->box.y0 + y) + c->box.x0;
+    aw_plane_expand_row(w->ground, w->factor, c->box.y0 + y, c->box.x0, c->width, c->clear + at);
+    aw_plane_expand_row(w->blob, w->factor, c->box.y0 + y, c->box.x0, c->width, c->blob + at);
+    for (int x = 0; x < c->width; x++) {
+      c->clear[at + (gsize)x] = MAX(g[x] - c->clear[at + (gsize)x], 0);
+      if (c->mask[at + (gsize)x])
+        c->top = MAX(c->top, c->clear[at + (gsize)x]);
+    }
+  }
+}
+
+/* Landscape of the pieces: smoothed distance in radii, plus the blob filter. */
+static gboolean take_landscape(AwCluster *c, const AwSegmentWork *w, GError **error)
+{
+  gsize n = (gsize)c->width * (gsize)c->height;
+  double r = w->scale.radius_px;
+  aw_distance_inside(c->mask, c->width, c->height, (float)(2 * r), c->distance);
+  AwPlane d = { c->width, c->height, c->distance };
+  g_autoptr(AwPlane) soft = aw_smooth_plane(&d, MAX(w->rules->piece_blur * r, 0.5), error);
+  if (!soft)
+    return FALSE;
+  for (gsize i = 0; i < n; i++)
+    c->land[i] = soft->value[i] / (float)r + (float)w->rules->blob_weight * CLAMP(c->blob[i], -1.f, 1.f);
+  return TRUE;
+}
+
+static void free_cluster(AwCluster *c)
+{
+  g_free(c->mask);
+  g_free(c->clear);
+  g_free(c->label);
+}
+
+static gboolean fill_cluster(AwCluster *c, const AwSegmentWork *w, const AwMaskRuns *runs, const gsize *first,
+                             gsize n_runs, AwRect box, GError **error)
+{
+  *c = (AwCluster){ .box = { MAX(box.x0 - 1, 0), MAX(box.y0 - 1, 0), MIN(box.x1 + 1, w->width_px),
+                             MIN(box.y1 + 1, w->height_px) } };
+  c->width = c->box.x1 - c->box.x0;
+  c->height = c->box.y1 - c->box.y0;
+  gsize n = (gsize)c->width * (gsize)c->height;
+  c->mask = g_new0(guint8, n);
+  c->clear = g_new(float, 4 * n);
+  c->distance = c->clear + n;
+  c->blob = c->clear + 2 * n;
+  c->land = c->clear + 3 * n;
+  c->label = g_new(guint32, n);
+  take_runs(c, runs, first, n_runs);
+  take_values(c, w);
+  if (!take_landscape(c, w, error))
+    return FALSE;
+  c->n_labels = aw_watershed(c->land, c->mask, c->width, c->height, w->rules->piece_saddle, c->label);
+  return TRUE;
+}
+
+/* True label of most pixels of every piece, for fitting. */
+static void find_homes(AwPieces *p, const AwCluster *c, const AwSegmentWork *w)
+{
+  const guint32 *truth = w->probe->truth;
+  for (guint32 k = 1; k <= p->n; k++) {
+    g_autoptr(GHashTable) votes = g_hash_table_new(NULL, NULL);
+    guint best = 0;
+    for (int y = 0; y < c->height; y++)
+      for (int x = 0; x < c->width; x++) {
+        if (c->label[(gsize)y * (gsize)c->width + (gsize)x] != k)
+          continue;
+        guint32 t = truth[(gsize)(c->box.y0 + y) * (gsize)w->width_px + (gsize)(c->box.x0 + x)];
+        guint n = GPOINTER_TO_UINT(g_hash_table_lookup(votes, GUINT_TO_POINTER(t))) + 1;
+        g_hash_table_insert(votes, GUINT_TO_POINTER(t), GUINT_TO_POINTER(n));
+        if (n > best) {
+          best = n;
+          p->piece[k].home = t;
+        }
+      }
+  }
+}
+
+static void write_objects(AwSegmentWork *w, const AwCluster *c, const AwPieces *p)
+{
+  g_autofree guint32 *number = g_new0(guint32, p->n + 1);
+  for (guint32 k = 1; k <= p->n; k++)
+    if (p->piece[k].parent == k) {
+      number[k] = ++w->labels->n_labels;
+      double none = 0;
+      g_array_append_val(w->neck, none);
+    }
+  for (guint i = 0; i < p->links->len; i++) {
+    const AwLink *l = &g_array_index(p->links, AwLink, i);
+    if (l->a == l->b)
+      continue;
+    double neck = (double)l->clear_saddle / MIN(p->piece[l->a].plateau, p->piece[l->b].plateau);
+    double *na = &g_array_index(w->neck, double, number[l->a]), *nb = &g_array_index(w->neck, double, number[l->b]);
+    *na = MAX(*na, neck);
+    *nb = MAX(*nb, neck);
+  }
+  for (guint32 k = 1; k <= p->n; k++)
+    number[k] = number[aw_pieces_root(p, k)];
+  for (int y = 0; y < c->height; y++) {
+    const guint32 *from = c->label + (gsize)y * (gsize)c->width;
+    guint32 *to = w->labels->label + (gsize)(c->box.y0 + y) * (gsize)w->width_px + c->box.x0;
+    for (int x = 0; x < c->width; x++)
+      if (from[x])
+        to[x] = number[from[x]];
+  }
+}
+
+static gboolean work_cluster(AwSegmentWork *w, const AwMaskRuns *runs, const gsize *first, gsize n_runs, AwRect box,
+                             GError **error)
+{
+  AwCluster c;
+  gboolean ok = fill_cluster(&c, w, runs, first, n_runs, box, error);
+  if (ok) {
+    AwPieces p;
+    aw_pieces_build(&p, &c);
+    if (w->probe && w->probe->truth)
+      find_homes(&p, &c, w);
+    aw_pieces_merge(&p, w);
+    write_objects(w, &c, &p);
+    aw_pieces_clear(&p);
+  }
+  free_cluster(&c);
+  return ok;
+}
+
+gboolean aw_segment_pieces(AwSegmentWork *w, GError **error)
+{
+  g_autoptr(AwMaskRuns) runs = aw_mask_runs(w->mask, w->width_px, w->height_px, 1, TRUE);
+  double r = w->scale.radius_px, least = w->rules->smallest_area * G_PI * r * r;
+  g_autofree gsize *start = g_new0(gsize, (gsize)runs->n_parts + 2);
+  g_autofree gsize *order = g_new(gsize, runs->n_runs + 1);
+  for (gsize i = 0; i < runs->n_runs; i++)
+    start[runs->run[i].part + 2]++;
+  for (guint32 k = 2; k < runs->n_parts + 1; k++)
+    start[k] += start[k - 1];
+  for (gsize i = 0; i < runs->n_runs; i++)
+    order[start[runs->run[i].part + 1]++] = i;
+  for (guint32 k = 0; k < runs->n_parts; k++) {
+    const AwMaskPart *part = &runs->part[k];
+    if ((double)part->n_px < least)
+      continue;
+    if (!work_cluster(w, runs, order + start[k], start[k + 1] - start[k], part->box, error))
+      return FALSE;
+  }
+  return TRUE;
+}

@@ -1,0 +1,186 @@
+/* Aimwell - SPDX-License-Identifier: GPL-3.0-or-later */
+#include <math.h>
+
+#include "image/distance.h"
+#include "image/noise.h"
+#include "image/opening.h"
+#include "image/otsu.h"
+#include "image/rank.h"
+#include "image/smooth.h"
+#include "nuclei/segment_work.h"
+
+#define MIN_RADIUS_PX 3.0
+#define MAX_RADIUS_PX 60.0
+
+static gsize n_px(const AwPlane *p)
+{
+  return (gsize)p->width_px * (gsize)p->height_px;
+}
+
+/* The largest of 2^a 3^b (at most 24) that leaves `radius_px` at least `wanted_px` on the reduced grid. */
+static int factor_for(double radius_px, double wanted_px)
+{
+  static const int factor[] = { 24, 12, 8, 6, 4, 3, 2, 1 };
+  for (guint i = 0; i < G_N_ELEMENTS(factor); i++)
+    if (radius_px / factor[i] >= wanted_px)
+      return factor[i];
+  return 1;
+}
+
+AwPlane *aw_segment_ground(const AwPlane *plane, double radius_px, const AwSegmentRules *rules, GError **error)
+{
+  int factor = factor_for(radius_px, 3);
+  double r = radius_px / factor;
+  g_autoptr(AwPlane) small = aw_plane_reduce(plane, factor, error);
+  g_autoptr(AwPlane) open = small ? aw_opening_disc(small, rules->ground_radii * r, error) : NULL;
+  g_autoptr(AwPlane) soft = open ? aw_smooth_plane(open, r, error) : NULL;
+  AwPlane *ground = soft ? aw_plane_new(plane->width_px, plane->height_px, error) : NULL;
+  for (int y = 0; ground && y < plane->height_px; y++) {
+    float *row = aw_plane_row(ground, y), *top = aw_plane_row(plane, y);
+    aw_plane_expand_row(soft, factor, y, 0, plane->width_px, row);
+    for (int x = 0; x < plane->width_px; x++)
+      row[x] = MIN(row[x], top[x]);
+  }
+  return ground;
+}
+
+static gboolean is_peak(const AwPlane *p, int x, int y)
+{
+  float v = aw_plane_row(p, y)[x];
+  for (int dy = -1; dy <= 1; dy++)
+    for (int dx = -1; dx <= 1; dx++) {
+      int i = x + dx, j = y + dy;
+      if ((dx || dy) && i >= 0 && j >= 0 && i < p->width_px && j < p->height_px) {
+        float u = aw_plane_row(p, j)[i];
+        if (u > v || (u == v && (dy < 0 || (dy == 0 && dx < 0))))
+          return FALSE;
+      }
+    }
+  return TRUE;
+}
+
+/* Peaks of the plane above `least`; weight 1 or the square of the value. */
+static void find_peaks(const AwPlane *p, double least, gboolean square, GArray *value, GArray *weight)
+{
+  g_array_set_size(value, 0);
+  g_array_set_size(weight, 0);
+  for (int y = 0; y < p->height_px; y++)
+    for (int x = 0; x < p->width_px; x++) {
+      double v = (double)aw_plane_row(p, y)[x];
+      if (v > least && is_peak(p, x, y)) {
+        double w = square ? v * v : 1;
+        g_array_append_val(value, v);
+        g_array_append_val(weight, w);
+      }
+    }
+}
+
+static double median_of(const GArray *value, const GArray *weight)
+{
+  return aw_weighted_median((const double *)(const void *)value->data, (const double *)(const void *)weight->data,
+                            value->len);
+}
+
+/* Radius from what stands above `level`, in pixels of the plane; NaN when nothing does. */
+static double radius_above(const AwPlane *plane, double level, GArray *value, GArray *weight, GError **error)
+{
+  gsize n = n_px(plane);
+  g_autoptr(AwPlane) d = aw_plane_new(plane->width_px, plane->height_px, error);
+  g_autofree guint8 *mask = g_try_malloc(2 * n);
+  if (!d || !mask)
+    return NAN;
+  for (gsize i = 0; i < n; i++)
+    mask[i] = (double)plane->value[i] > level;
+  aw_mask_open(mask, plane->width_px, plane->height_px, mask + n);
+  aw_mask_fill_holes(mask, plane->width_px, plane->height_px, 100);
+  aw_distance_inside(mask, plane->width_px, plane->height_px, (float)(2 * MAX_RADIUS_PX), d->value);
+  g_autoptr(AwPlane) soft = aw_smooth_plane(d, 1, error);
+  if (!soft)
+    return NAN;
+  find_peaks(soft, 1.5, TRUE, value, weight);
+  return median_of(value, weight);
+}
+
+static AwPlane *above_ground(const AwPlane *plane, double radius_px, const AwSegmentRules *rules, GError **error)
+{
+  AwPlane *clear = aw_segment_ground(plane, radius_px, rules, error);
+  for (gsize i = 0; clear && i < n_px(plane); i++)
+    clear->value[i] = plane->value[i] - clear->value[i];
+  return clear;
+}
+
+/* Typical height: median of the smoothed peaks that Otsu's threshold or the noise does not rule out. */
+static double typical_height(const AwPlane *clear, double radius_px, double noise, const AwSegmentRules *rules,
+                             double *n_peaks, GArray *value, GArray *weight, GError **error)
+{
+  g_autoptr(AwPlane) soft = aw_smooth_plane(clear, MAX(rules->height_blur * radius_px, 0.5), error);
+  if (!soft)
+    return NAN;
+  double least = MAX(0.5 * (double)aw_otsu(soft->value, n_px(soft)), 3 * noise);
+  find_peaks(soft, least, FALSE, value, weight);
+  *n_peaks = value->len;
+  return median_of(value, weight);
+}
+
+static double first_radius(const AwPlane *smooth, GArray *value, GArray *weight, GError **error)
+{
+  double r = NAN;
+  for (int factor = 4; factor >= 1; factor /= 2) {
+    g_autoptr(AwPlane) small = aw_plane_reduce(smooth, factor, error);
+    if (!small)
+      return NAN;
+    r = radius_above(small, aw_otsu(small->value, n_px(small)), value, weight, error);
+    if (r >= 5)
+      return MIN(factor * r, MAX_RADIUS_PX);
+  }
+  return CLAMP(r, MIN_RADIUS_PX, MAX_RADIUS_PX);
+}
+
+static gboolean refine(AwSegmentWork *w, double radius_px, GArray *value, GArray *weight, GError **error)
+{
+  AwSegmentScale *s = &w->scale;
+  double handle = w->settings->nucleus_width_px / 2;
+  s->radius_px = handle > 0 ? handle : radius_px;
+  for (int pass = 0; pass < 2; pass++) {
+    int factor = factor_for(s->radius_px, 6);
+    g_autoptr(AwPlane) coarse = aw_plane_reduce(w->smooth, factor, error);
+    g_autoptr(AwPlane) clear = coarse ? above_ground(coarse, s->radius_px / factor, w->rules, error) : NULL;
+    if (!clear)
+      return FALSE;
+    s->height =
+        typical_height(clear, s->radius_px / factor, s->noise / factor, w->rules, &s->weight, value, weight, error);
+    if (!(s->height > 0))
+      break;
+    double r = factor * radius_above(clear, 0.42 * s->height, value, weight, error);
+    if (!(handle > 0) && isfinite(r))
+      s->radius_px = CLAMP(r, MIN_RADIUS_PX, MAX_RADIUS_PX);
+  }
+  return TRUE;
+}
+
+gboolean aw_segment_measure_scale(AwSegmentWork *w, const AwImage *image, GError **error)
+{
+  w->scale = (AwSegmentScale){ NAN, NAN, aw_image_noise(image), 0 };
+  g_autoptr(GArray) value = g_array_new(FALSE, FALSE, sizeof(double));
+  g_autoptr(GArray) weight = g_array_new(FALSE, FALSE, sizeof(double));
+  GError *bad = NULL;
+  double r = first_radius(w->smooth, value, weight, &bad);
+  if (isfinite(r) && !bad)
+    refine(w, r, value, weight, &bad);
+  if (bad) {
+    g_propagate_error(error, bad);
+    return FALSE;
+  }
+  if (!(w->scale.height > 0))
+    w->scale = (AwSegmentScale){ NAN, NAN, w->scale.noise, 0 };
+  return TRUE;
+}
+
+gboolean aw_segment_prepare(AwSegmentWork *w, const AwImage *image, GError **error)
+{
+  (void)image;
+  w->factor = factor_for(w->scale.radius_px, 6);
+  w->coarse = aw_plane_reduce(w->smooth, w->factor, error);
+  w->ground = w->coarse ? aw_segment_ground(w->coarse, w->scale.radius_px / w->factor, w->rules, error) : NULL;
+  return w->ground != NULL;
+}
