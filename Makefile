@@ -83,6 +83,18 @@ $(BIN)/bench/%: $(OBJ)/tests/bench/%.o $(sup_lib) $(view_lib) $(fig_lib) $(core_
 	@mkdir -p $(@D); echo "LD $@"
 	$(Q)$(CC) $(LDFLAGS_ALL) -o $@ $< $(sup_lib) $(view_lib) $(fig_lib) $(core_lib) $(fig_libs) $(core_libs)
 
+# ---- sample data: sampleimages/README.md ----
+
+sample_src := $(sort $(wildcard sampleimages/*.c))
+
+$(BIN)/generate-sample: $(call objs,$(sample_src)) $(core_lib)
+	@mkdir -p $(@D); echo "LD $@"
+	$(Q)$(CC) $(LDFLAGS_ALL) -o $@ $^ $(core_libs)
+
+.PHONY: sampleimages
+sampleimages: $(BIN)/generate-sample ## draw the sample dish anew (test-reference checks that nothing changed)
+	$< sampleimages
+
 # ---- tests: tests/README.md lists the tiers ----
 
 reference_src := $(sort $(wildcard tests/reference/*.c))

@@ -130,18 +130,24 @@ static double draw_content(AwRandom *r)
   return u < 0.55 ? 1.0 : u < 0.75 ? 1.0 + (u - 0.55) / 0.2 : 2.0;
 }
 
+/* Long, bent and with blunt ends; gives the aspect. */
+static double make_kidney(AwShape *shape, AwRandom *r)
+{
+  shape->wave_cos[2] -= 0.045;
+  shape->bend_rad = between(r, 0.8, 1.35);
+  return between(r, 1.5, 1.9);
+}
+
 static AwTruth *interphase(const Ground *ground, AwScanPoint at, AwRandom *r)
 {
   double content = draw_content(r), width = 13.4 * pow(content, 0.3) * exp(0.055 * tame_normal(r));
-  double aspect = 1.08 + 0.45 * aw_random_unit(r) * aw_random_unit(r);
+  double aspect = 1.08 + 0.6 * aw_random_unit(r) * aw_random_unit(r);
   AwShape shape = { .position = at, .angle_rad = G_PI * aw_random_unit(r) };
-  if (aw_random_unit(r) < 0.1) {
-    aspect = between(r, 1.4, 1.65);
-    shape.bend_frac = between(r, 0.3, 0.5);
-  }
+  draw_waves(&shape, 0.025, r);
+  if (aw_random_unit(r) < 0.1)
+    aspect = make_kidney(&shape, r);
   shape.major_um = width * sqrt(aspect);
   shape.minor_um = width / sqrt(aspect);
-  draw_waves(&shape, 0.025, r);
   AwTruth *truth = from_shape(AW_TRUTH_INTERPHASE, &shape, r);
   truth->light_e = ground->plan->light_e * content * exp(0.07 * tame_normal(r));
   truth->dome_frac = between(r, 0.25, 0.5);

@@ -152,7 +152,11 @@ void aw_shape_outline(const AwShape *shape, AwScanPoint *outline)
     for (int k = 0; k < AW_SHAPE_N_WAVES; k++)
       f += shape->wave_cos[k] * cos((k + 2) * t) + shape->wave_sin[k] * sin((k + 2) * t);
     double u = a * f * cos(t), v = b * f * sin(t);
-    v += shape->bend_frac * a * (u * u / (a * a) - 0.5);
+    if (shape->bend_rad > 0.0) {
+      double radius = a / shape->bend_rad, along = u / radius, across = radius - v;
+      u = across * sin(along);
+      v = radius - across * cos(along);
+    }
     outline[i].x_um = shape->position.x_um + u * turn_x - v * turn_y;
     outline[i].y_um = shape->position.y_um + u * turn_y + v * turn_x;
   }

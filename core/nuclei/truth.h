@@ -55,16 +55,16 @@ void aw_truths_measure_gaps(GPtrArray *truths, double far_um);
 #define AW_SHAPE_N_WAVES 5
 
 /**
- * AwShape: a nucleus-like form: an ellipse whose radius carries a few slow waves, then bent along its length.
- * With t the angle parameter and f(t) = 1 + sum_k (c_k cos kt + s_k sin kt), k = 2 ... 6:
- * u = a f cos t, v = b f sin t + bend a ((u/a)^2 - 1/2), turned by the angle and moved to the position.
+ * AwShape: a nucleus-like form: an ellipse whose radius carries a few slow waves, its long axis bent to an arc.
+ * With t the angle parameter and f(t) = 1 + sum_k (c_k cos kt + s_k sin kt), k = 2 ... 6, the point
+ * (a f cos t, b f sin t) is laid along an arc whose half length a spans bend_rad, turned and moved to the position.
  */
 typedef struct {
   AwScanPoint position;
   double major_um, minor_um;                                     /* full axes of the ellipse: 2a, 2b */
   double angle_rad;                                              /* of the major axis against +x of the scan */
   double wave_cos[AW_SHAPE_N_WAVES], wave_sin[AW_SHAPE_N_WAVES]; /* c_k, s_k of k = 2 ... 6; sum of sizes below 0.5 */
-  double bend_frac;                                              /* 0 straight; about 0.5 a kidney; keeps the area */
+  double bend_rad;                                               /* 0 straight; about 1 a kidney */
 } AwShape;
 
 /* Writes the AW_SHAPE_N_POINTS points of the form's outline. */
