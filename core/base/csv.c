@@ -205,7 +205,7 @@ static gboolean read_rows(Reader *r, GError **error)
       return FALSE;
     if (n != csv->n_columns) {
       g_set_error(error, AW_ERROR, AW_ERROR_FORMAT,
-                  "%s, line %u: %" G_GSIZE_FORMAT " fields, but the header has %" G_GSIZE_FORMAT, csv->name, line, n,
+                  "%s, line %u: %" G_GSIZE_FORMAT " fields where the table has %" G_GSIZE_FORMAT, csv->name, line, n,
                   csv->n_columns);
       return FALSE;
     }
@@ -236,8 +236,29 @@ static gboolean check_bytes(const AwCsv *csv, GError **error)
   return TRUE;
 }
 
-/* Takes over `text`, which has a NUL after its n_bytes. */
-static AwCsv *parse_owned(char *text, gsize n_bytes, const char *name, char separator, GError **error)
+/* Puts the headings of a table without a header row behind its text, so that they are found by offset like fields. */
+static gboolean append_headings(AwCsv *csv, const char *const *headings, GError **error)
+{
+  g_autoptr(GString) tail = g_string_new(NULL);
+  for (; headings[csv->n_columns]; csv->n_columns++) {
+    guint32 offset = (guint32)(csv->n_bytes + 1 + tail->len);
+    if (!append_u32(&csv->field, &csv->n_fields, &csv->fields_room, offset, error))
+      return FALSE;
+    g_string_append_len(tail, headings[csv->n_columns], (gssize)strlen(headings[csv->n_columns]) + 1);
+  }
+  char *text = g_try_realloc(csv->text, csv->n_bytes + 1 + tail->len);
+  if (!text) {
+    g_set_error(error, AW_ERROR, AW_ERROR_MEMORY, "not enough memory to read %s", csv->name);
+    return FALSE;
+  }
+  csv->text = text;
+  memcpy(text + csv->n_bytes + 1, tail->str, tail->len);
+  return append_u32(&csv->line, &csv->n_lines, &csv->lines_room, 0, error);
+}
+
+/* Takes over `text`, which has a NUL after its n_bytes. `headings`: NULL when the text has a header row. */
+static AwCsv *parse_owned(char *text, gsize n_bytes, const char *name, char separator, const char *const *headings,
+                          GError **error)
 {
   g_autoptr(AwCsv) csv = g_new0(AwCsv, 1);
   csv->name = g_strdup(name);
@@ -245,13 +266,13 @@ static AwCsv *parse_owned(char *text, gsize n_bytes, const char *name, char sepa
   csv->n_bytes = n_bytes;
   csv->separator = separator;
   csv->comments = g_ptr_array_new_with_free_func(g_free);
-  if (!check_bytes(csv, error))
+  if (!check_bytes(csv, error) || (headings && !append_headings(csv, headings, error)))
     return NULL;
-  gsize bom = g_str_has_prefix(text, "\xef\xbb\xbf") ? 3 : 0;
-  Reader r = { csv, text + bom, text + n_bytes, 1 };
+  gsize bom = g_str_has_prefix(csv->text, "\xef\xbb\xbf") ? 3 : 0;
+  Reader r = { csv, csv->text + bom, csv->text + n_bytes, 1 };
   read_comments(&r);
   g_ptr_array_add(csv->comments, NULL);
-  if (!read_header(&r, error) || !read_rows(&r, error))
+  if ((!headings && !read_header(&r, error)) || !read_rows(&r, error))
     return NULL;
   return g_steal_pointer(&csv);
 }
@@ -262,10 +283,10 @@ AwCsv *aw_csv_read(const char *path, char separator, GError **error)
   gsize n_bytes = 0;
   if (!aw_input_read(path, AW_MAX_TEXT_BYTES, &text, &n_bytes, error))
     return NULL;
-  return parse_owned(text, n_bytes, path, separator, error);
+  return parse_owned(text, n_bytes, path, separator, NULL, error);
 }
 
-AwCsv *aw_csv_parse(const char *bytes, gsize n_bytes, const char *name, char separator, GError **error)
+static char *copy_text(const char *bytes, gsize n_bytes, const char *name, GError **error)
 {
   if (n_bytes > AW_MAX_TEXT_BYTES) {
     g_set_error(error, AW_ERROR, AW_ERROR_RANGE, "%s is larger than %" G_GSIZE_FORMAT " bytes, the limit for a table",
@@ -273,11 +294,22 @@ AwCsv *aw_csv_parse(const char *bytes, gsize n_bytes, const char *name, char sep
     return NULL;
   }
   char *text = aw_try_alloc(n_bytes + 1, 1, name, error);
-  if (!text)
-    return NULL;
-  if (n_bytes)
+  if (text && n_bytes)
     memcpy(text, bytes, n_bytes);
-  return parse_owned(text, n_bytes, name, separator, error);
+  return text;
+}
+
+AwCsv *aw_csv_parse(const char *bytes, gsize n_bytes, const char *name, char separator, GError **error)
+{
+  char *text = copy_text(bytes, n_bytes, name, error);
+  return text ? parse_owned(text, n_bytes, name, separator, NULL, error) : NULL;
+}
+
+AwCsv *aw_csv_parse_bare(const char *bytes, gsize n_bytes, const char *name, char separator,
+                         const char *const *headings, GError **error)
+{
+  char *text = copy_text(bytes, n_bytes, name, error);
+  return text ? parse_owned(text, n_bytes, name, separator, headings, error) : NULL;
 }
 
 const char *aw_csv_name(const AwCsv *csv)

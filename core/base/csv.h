@@ -11,11 +11,15 @@
  */
 typedef struct AwCsv AwCsv;
 
-/* Reads `path`, fields parted by `separator` (',' or '\t' or ';'). Free with aw_csv_free. */
+/* Reads `path`, fields parted by `separator` (',', ';', '\t' or ' '). Free with aw_csv_free. */
 AwCsv *aw_csv_read(const char *path, char separator, GError **error);
 
 /* The same from memory; `name` stands for the file in errors. `bytes` need not end in NUL. */
 AwCsv *aw_csv_parse(const char *bytes, gsize n_bytes, const char *name, char separator, GError **error);
+
+/* As aw_csv_parse for text without a header row; `headings` (NULL-terminated) name its columns. */
+AwCsv *aw_csv_parse_bare(const char *bytes, gsize n_bytes, const char *name, char separator,
+                         const char *const *headings, GError **error);
 void aw_csv_free(AwCsv *csv);
 G_DEFINE_AUTOPTR_CLEANUP_FUNC(AwCsv, aw_csv_free)
 

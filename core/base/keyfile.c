@@ -79,7 +79,7 @@ static gboolean check_values(AwKeyFile *file, GError **error)
     g_auto(GStrv) keys = g_key_file_get_keys(file->keys, groups[i], NULL, NULL);
     for (gsize j = 0; keys && keys[j]; j++) {
       g_autoptr(GError) bad = NULL;
-      g_autofree char *value = g_key_file_get_string(file->keys, groups[i], keys[j], &bad);
+      g_free(g_key_file_get_string(file->keys, groups[i], keys[j], &bad));
       if (bad) {
         g_autofree char *where = place(file, groups[i], keys[j]);
         g_set_error(error, AW_ERROR, AW_ERROR_FORMAT, "%s: %s", where, bad->message);

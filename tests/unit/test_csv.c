@@ -83,7 +83,7 @@ static void refused(void)
 {
   assert_refused("", 0, AW_ERROR_EMPTY, "t.csv is empty");
   assert_refused("# only\n\n", 8, AW_ERROR_EMPTY, "no header row");
-  assert_refused("a,b\n1,2\n1\n", 10, AW_ERROR_FORMAT, "t.csv, line 3: 1 fields, but the header has 2");
+  assert_refused("a,b\n1,2\n1\n", 10, AW_ERROR_FORMAT, "t.csv, line 3: 1 fields where the table has 2");
   assert_refused("a,b\n1,2,3\n", 10, AW_ERROR_FORMAT, "t.csv, line 2: 3 fields");
   assert_refused("a,b, a\n", 7, AW_ERROR_FORMAT, "t.csv, line 1: column 'a' stands twice");
   assert_refused("a,b\n1,\"2\n3\n", 11, AW_ERROR_FORMAT, "t.csv, line 2: a quote is opened and never closed");
