@@ -82,7 +82,7 @@ AwCanvas *aw_canvas_open(const char *path, double width, double height, GError *
   Kind kind;
   if (!kind_of(path, &kind, error) || !side_fits(path, "wide", width, error) || !side_fits(path, "high", height, error))
     return NULL;
-  g_autoptr(AwCanvas) canvas = g_new0(AwCanvas, 1);
+  AwCanvas *canvas = g_new0(AwCanvas, 1);
   canvas->path = g_strdup(path);
   canvas->kind = kind;
   canvas->bytes = g_byte_array_new();
@@ -90,9 +90,10 @@ AwCanvas *aw_canvas_open(const char *path, double width, double height, GError *
   canvas->cr = cairo_create(canvas->surface);
   cairo_set_source_rgb(canvas->cr, 1, 1, 1);
   cairo_paint(canvas->cr);
-  if (!drawn_well(canvas, cairo_status(canvas->cr), error))
-    return NULL;
-  return g_steal_pointer(&canvas);
+  if (drawn_well(canvas, cairo_status(canvas->cr), error))
+    return canvas;
+  aw_canvas_free(canvas);
+  return NULL;
 }
 
 cairo_t *aw_canvas_cairo(AwCanvas *canvas)

@@ -170,8 +170,9 @@ static double next_block(const AwMapPage *page, double x, double y, double width
 void aw_map_draw_side(const AwMapPage *page, double x, double y, double width, gboolean in_row)
 {
   static const Block blocks[] = { nuclei_block, tour_block, axes_block, next_block };
-  double u = page->u, column = (width - 3 * 30 * u) / (double)G_N_ELEMENTS(blocks);
-  for (gsize i = 0; i < G_N_ELEMENTS(blocks); i++) {
+  const gsize n = G_N_ELEMENTS(blocks);
+  double u = page->u, column = (width - ((double)n - 1) * 30 * u) / (double)n;
+  for (gsize i = 0; i < n; i++) {
     if (blocks[i] == axes_block && !page->placed)
       continue;
     double used = blocks[i](page, x, y, in_row ? column : width);
