@@ -6,17 +6,17 @@
 #include "steps/common.h"
 
 typedef struct {
-  const char *const *gates;  /* "FEATURE=MIN..MAX" texts, NULL-terminated, or NULL */
-  gboolean no_default_gates; /* only the gates given */
-  gboolean propose;          /* gate all nuclei, even when only decisions are asked for */
+  const char *const *gates;             /* "FEATURE=MIN..MAX" texts, NULL-terminated, or NULL */
+  gboolean no_default_gates;            /* only the gates given */
+  gboolean propose;                     /* gate all nuclei, even when only decisions are asked for */
   const char *accept, *reject, *forget; /* id lists such as "3,7,10-20", or the word "proposed"; NULL for none */
-  gint64 n_particles;        /* 0: leave as it is */
+  gint64 n_particles;                   /* 0: leave as it is */
 } AwChooseSettings;
 
 typedef struct {
   gsize n_nuclei, n_proposed, n_accepted, n_rejected;
-  gboolean gated;            /* gates were applied in this step */
-  GPtrArray *gate_lines;     /* char *: one sentence per gate and how many it removed, owned */
+  gboolean gated;        /* gates were applied in this step */
+  GPtrArray *gate_lines; /* char *: one sentence per gate and how many it removed, owned */
 } AwChooseSummary;
 
 void aw_choose_summary_clear(AwChooseSummary *summary);

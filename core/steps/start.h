@@ -13,8 +13,8 @@ typedef struct {
 
 typedef struct {
   gsize n_frames;
-  int width_px, height_px;   /* of the first frame */
-  double pixel_um;           /* 0 when nobody said */
+  int width_px, height_px;    /* of the first frame */
+  double pixel_um;            /* 0 when nobody said */
   double width_um, height_um; /* extent of the scan */
   gint64 n_bytes;
 } AwStartSummary;
