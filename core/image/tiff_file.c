@@ -7,6 +7,8 @@
 #include <sys/stat.h>
 #include <unistd.h>
 
+#include "base/limits.h"
+
 void aw_tiff_log_clear(AwTiffLog *log)
 {
   g_clear_pointer(&log->complaint, g_free);
@@ -33,8 +35,9 @@ static int on_warning(TIFF *tif, void *data, const char *module, const char *for
 {
   (void)tif;
   (void)module;
-  if (g_str_has_prefix(format, "IO error during reading"))
-    keep_first(data, format, args);
+  AwTiffLog *log = data;
+  if (log->keep_warnings || g_str_has_prefix(format, "IO error during reading"))
+    keep_first(log, format, args);
   return 1;
 }
 
@@ -74,15 +77,41 @@ static int open_regular(const char *path, gint64 *n_bytes, GError **error)
   return -1;
 }
 
-/* libtiff's own count stops quietly at a broken link of the chain of directories; its complaint tells. */
+/* libtiff's count stops where the chain of directories breaks off or loops; only its complaint or warning tells. */
 static gboolean count_directories(AwTiffFile *file, GError **error)
 {
   aw_tiff_log_clear(&file->log);
+  file->log.keep_warnings = TRUE;
   file->n_directories = (int)MIN(TIFFNumberOfDirectories(file->tif), (tdir_t)G_MAXINT);
+  file->log.keep_warnings = FALSE;
   if (!file->log.complaint)
     return TRUE;
   return aw_tiff_fail(file, AW_ERROR_FORMAT, error, "is damaged: its chain of pages breaks off after %d",
                       file->n_directories);
+}
+
+gboolean aw_tiff_file_check_size(const AwTiffFile *file, GError **error)
+{
+  guint32 width = 0, height = 0;
+  TIFFGetField(file->tif, TIFFTAG_IMAGEWIDTH, &width);
+  TIFFGetField(file->tif, TIFFTAG_IMAGELENGTH, &height);
+  if (width >= 1 && height >= 1 && width <= AW_MAX_SIDE_PX && height <= AW_MAX_SIDE_PX &&
+      (gint64)width * height <= AW_MAX_PIXELS)
+    return TRUE;
+  return aw_tiff_fail(file, AW_ERROR_RANGE, error, "claims %u x %u px; the limits are 1 to %d px a side", width, height,
+                      AW_MAX_SIDE_PX);
+}
+
+/* An impossible size makes libtiff give up as well; it is the clearer reason. */
+static gboolean read_directory(AwTiffFile *file, gboolean ok, GError **error)
+{
+  if (ok && !file->log.complaint)
+    return TRUE;
+  gboolean has_size = TIFFGetField(file->tif, TIFFTAG_IMAGEWIDTH, &(guint32){ 0 }) &&
+                      TIFFGetField(file->tif, TIFFTAG_IMAGELENGTH, &(guint32){ 0 });
+  if (has_size && !aw_tiff_file_check_size(file, error))
+    return FALSE;
+  return aw_tiff_fail(file, AW_ERROR_FORMAT, error, "is damaged or cut off: its directory cannot be read");
 }
 
 AwTiffFile *aw_tiff_file_open(const char *path, GError **error)
@@ -95,18 +124,16 @@ AwTiffFile *aw_tiff_file_open(const char *path, GError **error)
     return NULL;
   TIFFOpenOptions *options = aw_tiff_options(&file->log);
   /* No memory map ("m"): a file that shrinks while it is read must be an error, not a signal. */
-  file->tif = TIFFFdOpenExt(fd, path, "rm", options);
+  file->tif = TIFFFdOpenExt(fd, path, "rhm", options);
   TIFFOpenOptionsFree(options);
   if (!file->tif) {
     close(fd);
-    aw_tiff_fail(file, AW_ERROR_FORMAT, error, "is damaged: its first page cannot be read");
+    aw_tiff_fail(file, AW_ERROR_FORMAT, error, "is damaged: its header cannot be read");
     return NULL;
   }
-  if (file->log.complaint) {
-    aw_tiff_fail(file, AW_ERROR_FORMAT, error, "is damaged or cut off");
+  if (!read_directory(file, TIFFReadDirectory(file->tif), error) || !count_directories(file, error))
     return NULL;
-  }
-  return count_directories(file, error) ? g_steal_pointer(&file) : NULL;
+  return g_steal_pointer(&file);
 }
 
 void aw_tiff_file_free(AwTiffFile *file)
@@ -128,7 +155,5 @@ gboolean aw_tiff_file_choose(AwTiffFile *file, int directory, int page, GError *
   aw_tiff_log_clear(&file->log);
   if (TIFFCurrentDirectory(file->tif) == (tdir_t)directory)
     return TRUE;
-  if (!TIFFSetDirectory(file->tif, (tdir_t)directory) || file->log.complaint)
-    return aw_tiff_fail(file, AW_ERROR_FORMAT, error, "is damaged: its directory cannot be read");
-  return TRUE;
+  return read_directory(file, TIFFSetDirectory(file->tif, (tdir_t)directory), error);
 }

@@ -14,6 +14,7 @@
 /* What libtiff said since aw_tiff_log_clear: the first error, or the first data it could not read and passed over. */
 typedef struct {
   char *complaint;
+  gboolean keep_warnings; /* warnings of every kind count as well */
 } AwTiffLog;
 
 void aw_tiff_log_clear(AwTiffLog *log);
@@ -37,6 +38,9 @@ G_DEFINE_AUTOPTR_CLEANUP_FUNC(AwTiffFile, aw_tiff_file_free)
 
 /* Makes a directory current; `page` is what the user calls it. */
 gboolean aw_tiff_file_choose(AwTiffFile *file, int directory, int page, GError **error);
+
+/* AW_ERROR_RANGE when the current directory's width or height is outside the limits. */
+gboolean aw_tiff_file_check_size(const AwTiffFile *file, GError **error);
 
 /* Sets "PLACE TEXT", followed by libtiff's complaint if there is one; always FALSE. */
 gboolean aw_tiff_fail(const AwTiffFile *file, AwErrorCode code, GError **error, const char *format, ...)

@@ -24,16 +24,13 @@ static guint32 tag32(const AwTiffFile *file, guint32 tag)
 
 static gboolean check_size(const AwTiffFile *file, AwTiffForm *form, GError **error)
 {
-  guint32 width = tag32(file, TIFFTAG_IMAGEWIDTH), height = tag32(file, TIFFTAG_IMAGELENGTH);
-  if (width < 1 || height < 1 || width > AW_MAX_SIDE_PX || height > AW_MAX_SIDE_PX ||
-      (gint64)width * height > AW_MAX_PIXELS)
-    return aw_tiff_fail(file, AW_ERROR_RANGE, error, "claims %u x %u px; the limits are 1 to %d px a side", width,
-                        height, AW_MAX_SIDE_PX);
+  if (!aw_tiff_file_check_size(file, error))
+    return FALSE;
   if (tag32(file, TIFFTAG_IMAGEDEPTH) > 1)
     return aw_tiff_fail(file, AW_ERROR_UNSUPPORTED, error, "is a volume of depth %u; only flat planes are read",
                         tag32(file, TIFFTAG_IMAGEDEPTH));
-  form->width_px = (int)width;
-  form->height_px = (int)height;
+  form->width_px = (int)tag32(file, TIFFTAG_IMAGEWIDTH);
+  form->height_px = (int)tag32(file, TIFFTAG_IMAGELENGTH);
   return TRUE;
 }
 
@@ -174,6 +171,19 @@ static gboolean check_strile_size(const AwTiffFile *file, AwTiffForm *form, GErr
   return TRUE;
 }
 
+/* Refuses what no file of this size can hold, before anything is allocated for it. */
+static gboolean check_claim(const AwTiffFile *file, const AwTiffForm *form, GError **error)
+{
+  gint64 planes = form->is_separate ? form->n_samples : 1;
+  gint64 bytes = (gint64)aw_pixels_row_bytes(&form->pixel, form->width_px) * form->height_px * planes;
+  if (bytes / most_expansion(tag16(file, TIFFTAG_COMPRESSION, COMPRESSION_NONE)) <= file->n_bytes)
+    return TRUE;
+  return aw_tiff_fail(file, AW_ERROR_FORMAT, error,
+                      "is cut off or damaged: it claims %d x %d px, %" G_GINT64_FORMAT
+                      " bytes of pixels, in a file of %" G_GINT64_FORMAT " bytes",
+                      form->width_px, form->height_px, bytes, file->n_bytes);
+}
+
 static gboolean count_striles(const AwTiffFile *file, AwTiffForm *form, GError **error)
 {
   gint64 width = form->strile_width_px, height = form->strile_height_px;
@@ -233,7 +243,7 @@ gboolean aw_tiff_form_read(const AwTiffFile *file, AwTiffForm *form, GError **er
   *form = (AwTiffForm){ 0 };
   return check_size(file, form, error) && check_compression(file, error) && check_samples(file, form, error) &&
          check_bits(file, form, error) && check_orientation(file, error) && check_strile_size(file, form, error) &&
-         count_striles(file, form, error) && check_data(file, form, error);
+         check_claim(file, form, error) && count_striles(file, form, error) && check_data(file, form, error);
 }
 
 double aw_tiff_form_pixel_um(const AwTiffFile *file, guint32 tag)
