@@ -50,15 +50,9 @@ static gboolean store_touched(AwRecord *record, GError **error)
   GHashTableIter iter;
   gpointer file, mtime_ns;
   g_hash_table_iter_init(&iter, record->touched);
-  while (g_hash_table_iter_next(&iter, &file, &mtime_ns)) {
-    sqlite3_stmt *update = aw_sql_prepare(record, "UPDATE file_time SET mtime_ns = ? WHERE file = ?", error);
-    if (!update)
+  while (g_hash_table_iter_next(&iter, &file, &mtime_ns))
+    if (!aw_frames_put_time(record, file, *(const gint64 *)mtime_ns, error))
       return FALSE;
-    sqlite3_bind_int64(update, 1, *(gint64 *)mtime_ns);
-    sqlite3_bind_text(update, 2, file, -1, SQLITE_TRANSIENT);
-    if (!aw_sql_run(record, update, error))
-      return FALSE;
-  }
   return TRUE;
 }
 

@@ -60,14 +60,14 @@ static gboolean put_frame(AwRecord *record, gsize number, const AwFrame *frame, 
   return aw_sql_run(record, put, error);
 }
 
-static gboolean put_time(AwRecord *record, const AwFrame *frame, GError **error)
+gboolean aw_frames_put_time(AwRecord *record, const char *file, gint64 mtime_ns, GError **error)
 {
   sqlite3_stmt *put = aw_sql_prepare(
       record, "INSERT INTO file_time VALUES(?, ?) ON CONFLICT(file) DO UPDATE SET mtime_ns = excluded.mtime_ns", error);
   if (!put)
     return FALSE;
-  aw_sql_bind_text(put, 1, frame->file);
-  sqlite3_bind_int64(put, 2, frame->mtime_ns);
+  aw_sql_bind_text(put, 1, file);
+  sqlite3_bind_int64(put, 2, mtime_ns);
   return aw_sql_run(record, put, error);
 }
 
@@ -98,10 +98,11 @@ gboolean aw_record_set_frames(AwRecord *record, GPtrArray *frames, GError **erro
                 AW_MAX_FRAMES);
     return FALSE;
   }
-  for (guint i = 0; i < frames->len; i++)
-    if (!put_frame(record, i, g_ptr_array_index(frames, i), error) ||
-        !put_time(record, g_ptr_array_index(frames, i), error))
+  for (guint i = 0; i < frames->len; i++) {
+    const AwFrame *frame = g_ptr_array_index(frames, i);
+    if (!put_frame(record, i, frame, error) || !aw_frames_put_time(record, frame->file, frame->mtime_ns, error))
       return FALSE;
+  }
   return drop_frames_from(record, frames->len, error);
 }
 

@@ -92,13 +92,11 @@ static gboolean put_shape(AwRecord *record, const AwNucleus *nucleus, gint64 *sh
   return TRUE;
 }
 
-static gboolean put_nucleus(AwRecord *record, const char *sql, const AwNucleus *nucleus, GError **error)
+/* put: the statement of insert_sql. */
+static gboolean put_nucleus(AwRecord *record, sqlite3_stmt *put, const AwNucleus *nucleus, GError **error)
 {
   gint64 shape;
   if (!put_shape(record, nucleus, &shape, error))
-    return FALSE;
-  sqlite3_stmt *put = aw_sql_prepare(record, sql, error);
-  if (!put)
     return FALSE;
   sqlite3_bind_int64(put, 1, nucleus->id);
   sqlite3_bind_int(put, 2, nucleus->frame);
@@ -174,10 +172,11 @@ gboolean aw_record_set_nuclei(AwRecord *record, GPtrArray *nuclei, GError **erro
   if (!ids || !drop_others(record, ids, error))
     return FALSE;
   g_autofree char *sql = insert_sql();
-  for (guint i = 0; i < nuclei->len; i++)
-    if (!put_nucleus(record, sql, g_ptr_array_index(nuclei, i), error))
+  sqlite3_stmt *put = aw_sql_prepare(record, sql, error);
+  for (guint i = 0; put && i < nuclei->len; i++)
+    if (!put_nucleus(record, put, g_ptr_array_index(nuclei, i), error))
       return FALSE;
-  return TRUE;
+  return put != NULL;
 }
 
 static gboolean take_shape(sqlite3_stmt *get, int column, AwNucleus *nucleus, GError **error)

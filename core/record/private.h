@@ -156,6 +156,11 @@ gboolean aw_history_read(AwRecord *record, AwHistory *history, GError **error);
 void aw_history_clear(AwHistory *history);
 G_DEFINE_AUTO_CLEANUP_CLEAR_FUNC(AwHistory, aw_history_clear)
 
+/* --- frames.c --- */
+
+/* The time of an image file, outside undo. */
+gboolean aw_frames_put_time(AwRecord *record, const char *file, gint64 mtime_ns, GError **error);
+
 /* --- shape.c: masks and outlines as blobs (docs/formats-record.md) --- */
 
 #define AW_SHAPE_STEPS_PER_UM 8192.0 /* outlines are kept to 1/8192 um */
