@@ -1,0 +1,30 @@
+/* Aimwell - SPDX-License-Identifier: GPL-3.0-or-later */
+#ifndef AW_PLAN_TOUR_SEARCH_H
+#define AW_PLAN_TOUR_SEARCH_H
+
+#include "plan/tour_array.h"
+#include "plan/tour_problem.h"
+
+/* The stages of the tour engine (internal to it). Orders are permutations of the problem's nodes, n of them. */
+
+/* Nearest neighbour: from the fixed beginning, or stop 0, always to the cheapest stop not yet visited. */
+guint32 *aw_tour_start_nearest(const AwTourProblem *problem, AwProgress *progress, GError **error);
+
+/* Greedy edges: the cheapest edges first that leave a path through every node, joined at the end. */
+guint32 *aw_tour_start_greedy(const AwTourProblem *problem, AwProgress *progress, GError **error);
+
+/* 2-opt: turns stretches of the tour round while that saves cost. */
+gboolean aw_tour_two_opt(const AwTourProblem *problem, AwTourArray *tour, AwProgress *progress, GError **error);
+
+/* Or-opt: moves runs of one to three nodes elsewhere, together with 2-opt, while that saves cost. */
+gboolean aw_tour_or_opt(const AwTourProblem *problem, AwTourArray *tour, AwProgress *progress, GError **error);
+
+#define AW_TOUR_MAX_EXACT 10
+
+/**
+ * The best order of at most AW_TOUR_MAX_EXACT stops, by dynamic programming over subsets. `order` has room for
+ * n stops.
+ */
+void aw_tour_exact(const AwStop *stops, guint n, const AwTourSettings *settings, guint32 *order);
+
+#endif
