@@ -4,6 +4,7 @@
 
 #include "figures/label.h"
 #include "figures/map_parts.h"
+#include "image/overview.h"
 
 #define MAX_OVERVIEW_SIDE_PX 8192
 #define MAX_SAMPLED 64 /* frames whose histogram sets the contrast of all */
@@ -12,53 +13,26 @@
 static const AwInk brightest = { 0.66, 0.68, 0.70, 1 };
 static const AwInk unseen = { 0.17, 0.19, 0.225, 1 }; /* a frame without a picture */
 
-typedef struct {
-  const guint8 *bytes;
-  gsize left;
-} Source;
-
-static cairo_status_t supply(void *closure, unsigned char *data, unsigned int length)
-{
-  Source *source = closure;
-  if (length > source->left)
-    return CAIRO_STATUS_READ_ERROR;
-  memcpy(data, source->bytes, length);
-  source->bytes += length;
-  source->left -= length;
-  return CAIRO_STATUS_SUCCESS;
-}
-
-static guint32 big_endian(const guint8 *b)
-{
-  return ((guint32)b[0] << 24) | ((guint32)b[1] << 16) | ((guint32)b[2] << 8) | b[3];
-}
-
-/* The picture of a frame, or NULL when there is none that can be shown. The sides are read from the PNG's header
- * first: a damaged record must not claim gigabytes. */
-static cairo_surface_t *decode(const AwFrame *frame)
+/* The picture of a frame, or NULL when there is none that can be shown. The sides stand at a fixed place of a PNG and
+ * are looked at first: a damaged record must not claim gigabytes. */
+static AwImage *decode(const AwFrame *frame)
 {
   gsize n = 0;
   const guint8 *bytes = frame->overview ? g_bytes_get_data(frame->overview, &n) : NULL;
-  if (n < 24 || big_endian(bytes + 16) > MAX_OVERVIEW_SIDE_PX || big_endian(bytes + 20) > MAX_OVERVIEW_SIDE_PX)
+  guint32 sides[2];
+  if (n < 24)
     return NULL;
-  Source source = { bytes, n };
-  cairo_surface_t *surface = cairo_image_surface_create_from_png_stream(supply, &source);
-  cairo_format_t format = cairo_image_surface_get_format(surface);
-  if (cairo_surface_status(surface) == CAIRO_STATUS_SUCCESS &&
-      (format == CAIRO_FORMAT_RGB24 || format == CAIRO_FORMAT_ARGB32))
-    return surface;
-  cairo_surface_destroy(surface);
-  return NULL;
+  memcpy(sides, bytes + 16, sizeof sides);
+  if (GUINT32_FROM_BE(sides[0]) > MAX_OVERVIEW_SIDE_PX || GUINT32_FROM_BE(sides[1]) > MAX_OVERVIEW_SIDE_PX)
+    return NULL;
+  return aw_overview_decode(frame->overview, "overview", NULL);
 }
 
-static void count_greys(cairo_surface_t *surface, gint64 histogram[256])
+static void count_greys(const AwImage *image, gint64 histogram[256])
 {
-  int stride = cairo_image_surface_get_stride(surface), width = cairo_image_surface_get_width(surface);
-  for (int y = 0; y < cairo_image_surface_get_height(surface); y++) {
-    const unsigned char *row = cairo_image_surface_get_data(surface) + (gsize)y * (gsize)stride;
-    for (int x = 0; x < width; x++)
-      histogram[row[4 * x + 1]]++;
-  }
+  gsize n = (gsize)image->width_px * (gsize)image->height_px;
+  for (gsize i = 0; i < n; i++)
+    histogram[((const guint8 *)image->pixels)[i]]++;
 }
 
 static int percentile(const gint64 histogram[256], double frac)
@@ -85,10 +59,9 @@ static void make_contrast(GPtrArray *frames, guint32 table[256])
   gint64 histogram[256] = { 0 };
   guint stride = frames->len / MAX_SAMPLED + 1;
   for (guint i = 0; i < frames->len; i += stride) {
-    cairo_surface_t *surface = decode(frames->pdata[i]);
-    if (surface)
-      count_greys(surface, histogram);
-    cairo_surface_destroy(surface);
+    g_autoptr(AwImage) image = decode(frames->pdata[i]);
+    if (image)
+      count_greys(image, histogram);
   }
   int lo = percentile(histogram, 0.05), hi = MAX(percentile(histogram, 0.998), lo + 12);
   for (int v = 0; v < 256; v++) {
@@ -98,19 +71,17 @@ static void make_contrast(GPtrArray *frames, guint32 table[256])
   }
 }
 
-static cairo_surface_t *darken(cairo_surface_t *surface, const guint32 table[256])
+static cairo_surface_t *darken(const AwImage *image, const guint32 table[256])
 {
-  int width = cairo_image_surface_get_width(surface), height = cairo_image_surface_get_height(surface);
-  int stride = cairo_image_surface_get_stride(surface);
-  cairo_surface_t *out = cairo_image_surface_create(CAIRO_FORMAT_RGB24, width, height);
+  cairo_surface_t *out = cairo_image_surface_create(CAIRO_FORMAT_RGB24, image->width_px, image->height_px);
   if (cairo_surface_status(out) != CAIRO_STATUS_SUCCESS)
     return out;
-  int out_stride = cairo_image_surface_get_stride(out);
-  for (int y = 0; y < height; y++) {
-    const unsigned char *from = cairo_image_surface_get_data(surface) + (gsize)y * (gsize)stride;
-    guint32 *to = (guint32 *)(void *)(cairo_image_surface_get_data(out) + (gsize)y * (gsize)out_stride);
-    for (int x = 0; x < width; x++)
-      to[x] = table[from[4 * x + 1]];
+  gsize stride = (gsize)cairo_image_surface_get_stride(out), width = (gsize)image->width_px;
+  for (gsize y = 0; y < (gsize)image->height_px; y++) {
+    const guint8 *from = (const guint8 *)image->pixels + y * width;
+    guint32 *to = (guint32 *)(void *)(cairo_image_surface_get_data(out) + y * stride);
+    for (gsize x = 0; x < width; x++)
+      to[x] = table[from[x]];
   }
   cairo_surface_mark_dirty(out);
   return out;
@@ -124,29 +95,31 @@ static void frame_rect(const AwMapPage *page, const AwFrame *frame)
                   (box.y1 - box.y0) * page->scale);
 }
 
+/* A picture pixel is k plane pixels a side, so that at the right and lower rim the picture may reach out of the frame;
+ * the clip cuts that off. */
 static void draw_picture(const AwMapPage *page, const AwFrame *frame, const guint32 table[256])
 {
   cairo_t *cr = page->cr;
   frame_rect(page, frame);
   aw_style_set_ink(cr, unseen);
-  cairo_surface_t *raw = decode(frame), *surface = raw ? darken(raw, table) : NULL;
-  if (!surface) {
+  g_autoptr(AwImage) image = decode(frame);
+  if (!image) {
     cairo_fill(cr);
     return;
   }
   AwBox box = aw_upright_frame_box(&page->upright, frame);
+  int k = aw_overview_factor(frame->width_px, frame->height_px, MAX(image->width_px, image->height_px));
+  cairo_surface_t *surface = darken(image, table);
   cairo_save(cr);
   cairo_clip(cr);
   cairo_translate(cr, page->x + (box.x0 - page->box.x0) * page->scale, page->y + (box.y0 - page->box.y0) * page->scale);
-  cairo_scale(cr, (box.x1 - box.x0) * page->scale / cairo_image_surface_get_width(surface),
-              (box.y1 - box.y0) * page->scale / cairo_image_surface_get_height(surface));
+  cairo_scale(cr, k * page->scale, k * page->scale);
   cairo_set_source_surface(cr, surface, 0, 0);
   cairo_pattern_set_filter(cairo_get_source(cr), CAIRO_FILTER_GOOD);
   cairo_pattern_set_extend(cairo_get_source(cr), CAIRO_EXTEND_PAD);
   cairo_paint(cr);
   cairo_restore(cr);
   cairo_surface_destroy(surface);
-  cairo_surface_destroy(raw);
 }
 
 static gboolean can_place(const AwFrame *frame)

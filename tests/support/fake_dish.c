@@ -1,10 +1,10 @@
 /* Aimwell - SPDX-License-Identifier: GPL-3.0-or-later */
 #include "support/fake_dish.h"
 
-#include <cairo.h>
 #include <math.h>
 
 #include "base/random.h"
+#include "image/overview.h"
 
 #define N_OUTLINE 36
 
@@ -57,51 +57,36 @@ AwNucleus *fake_dish_add(FakeDish *dish, AwScanPoint q, double major_um, double 
   return n;
 }
 
-static cairo_status_t collect(void *closure, const unsigned char *data, unsigned int length)
-{
-  g_byte_array_append(closure, data, length);
-  return CAIRO_STATUS_SUCCESS;
-}
-
-/* Brightens one pixel by every nucleus near it; x, y in frame px. */
-static void paint_nucleus(const FakeDish *dish, const AwFrame *frame, const AwNucleus *n, float *grey, int side)
+/* A picture as core/image/overview.h defines it: pixel X is the middle of k plane pixels. */
+static void paint_nucleus(const FakeDish *dish, const AwFrame *frame, const AwNucleus *n, AwImage *out, int k)
 {
   AwPixelPoint c = aw_frame_centre(frame->width_px, frame->height_px);
   AwPixelPoint p = aw_scan_to_pixel(&dish->map, frame->stage, c, n->centroid);
-  double k = (double)frame->width_px / side, reach = (n->major / aw_pixel_map_scale(&dish->map) + 3 * k) / k;
-  double mx = (p.x_px + 0.5) / k - 0.5, my = (p.y_px + 0.5) / k - 0.5,
-         level = 90 + 110 * fmod((double)n->id * 0.618, 1);
-  for (int y = MAX(0, (int)(my - reach)); y < MIN(side, my + reach); y++)
-    for (int x = MAX(0, (int)(mx - reach)); x < MIN(side, mx + reach); x++) {
+  double reach = n->major / aw_pixel_map_scale(&dish->map) / k + 3, level = 90 + 110 * fmod((double)n->id * 0.618, 1);
+  double mx = (p.x_px + 0.5) / k - 0.5, my = (p.y_px + 0.5) / k - 0.5;
+  for (int y = MAX(0, (int)(my - reach)); y < MIN(out->height_px, my + reach); y++)
+    for (int x = MAX(0, (int)(mx - reach)); x < MIN(out->width_px, mx + reach); x++) {
       AwPixelPoint at = { (x + 0.5) * k - 0.5, (y + 0.5) * k - 0.5 };
       AwScanPoint q = aw_pixel_to_scan(&dish->map, frame->stage, c, at);
       double dx = q.x_um - n->centroid.x_um, dy = q.y_um - n->centroid.y_um;
       double a = (dx * cos(n->angle_rad) + dy * sin(n->angle_rad)) / (n->major / 2);
       double b = (-dx * sin(n->angle_rad) + dy * cos(n->angle_rad)) / (n->minor / 2);
-      double value = level / (1 + exp((hypot(a, b) - 1) * 12));
-      grey[y * side + x] = (float)MAX(grey[y * side + x], value);
+      float *grey = (float *)out->pixels + y * out->width_px + x;
+      *grey = (float)MAX((double)*grey, level / (1 + exp((hypot(a, b) - 1) * 12)));
     }
 }
 
-static GBytes *picture(const FakeDish *dish, const AwFrame *frame, int side, guint64 item)
+static GBytes *picture(const FakeDish *dish, const AwFrame *frame, int max_side_px, guint64 item)
 {
   AwRandom r = aw_random_stream(99, item);
-  g_autofree float *grey = g_new0(float, (gsize)side *(gsize)side);
+  int k = aw_overview_factor(frame->width_px, frame->height_px, max_side_px);
+  g_autoptr(AwImage) grey =
+      aw_image_new((frame->width_px + k - 1) / k, (frame->height_px + k - 1) / k, AW_SAMPLE_F32, NULL);
   for (guint i = 0; i < dish->nuclei->len; i++)
-    paint_nucleus(dish, frame, dish->nuclei->pdata[i], grey, side);
-  cairo_surface_t *surface = cairo_image_surface_create(CAIRO_FORMAT_RGB24, side, side);
-  for (int y = 0; y < side; y++)
-    for (int x = 0; x < side; x++) {
-      guint32 v = (guint32)CLAMP(20 + grey[y * side + x] + 4 * aw_random_normal(&r), 0, 255);
-      unsigned char *row =
-          cairo_image_surface_get_data(surface) + (gsize)y * (gsize)cairo_image_surface_get_stride(surface);
-      ((guint32 *)(void *)row)[x] = v << 16 | v << 8 | v;
-    }
-  cairo_surface_mark_dirty(surface);
-  GByteArray *bytes = g_byte_array_new();
-  cairo_surface_write_to_png_stream(surface, collect, bytes);
-  cairo_surface_destroy(surface);
-  return g_byte_array_free_to_bytes(bytes);
+    paint_nucleus(dish, frame, dish->nuclei->pdata[i], grey, k);
+  for (int i = 0; i < grey->width_px * grey->height_px; i++)
+    ((float *)grey->pixels)[i] += (float)(20 + 4 * aw_random_normal(&r));
+  return aw_image_overview(grey, MAX(grey->width_px, grey->height_px), 0, 255, NULL);
 }
 
 void fake_dish_paint(FakeDish *dish, int overview_px)
