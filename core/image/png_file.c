@@ -5,6 +5,7 @@
 #include <math.h>
 #include <png.h>
 #include <string.h>
+#include <sys/stat.h>
 
 #include "base/error.h"
 #include "base/limits.h"
@@ -93,6 +94,14 @@ static gboolean guarded_row(AwPngFile *p)
   return TRUE;
 }
 
+static gint64 source_bytes(const AwPngFile *p)
+{
+  if (!p->file)
+    return (gint64)g_bytes_get_size(p->bytes);
+  struct stat about;
+  return fstat(fileno(p->file), &about) == 0 ? about.st_size : 0;
+}
+
 static gboolean fail(const AwPngFile *p, AwErrorCode code, GError **error, const char *text)
 {
   g_set_error(error, AW_ERROR, code, "%s %s%s%s", p->name, text, p->complaint ? ": " : "",
@@ -149,12 +158,27 @@ static void take_info(AwPngFile *p)
   about->taken_at_unix_s = NAN;
 }
 
+/* Deflate (RFC 1951) gives at most 1032 bytes for one: refuses what no file of this size can hold. */
+static gboolean check_claim(const AwPngFile *p, GError **error)
+{
+  gint64 bytes = (gint64)aw_pixels_row_bytes(&p->form, p->about.width_px) * p->about.height_px;
+  if (bytes / 1032 <= source_bytes(p))
+    return TRUE;
+  g_set_error(error, AW_ERROR, AW_ERROR_FORMAT,
+              "%s is cut off or damaged: it claims %d x %d px, %" G_GINT64_FORMAT
+              " bytes of pixels, in a file of %" G_GINT64_FORMAT " bytes",
+              p->name, p->about.width_px, p->about.height_px, bytes, source_bytes(p));
+  return FALSE;
+}
+
 static AwPngFile *open_source(AwPngFile *source, int channel, GError **error)
 {
   g_autoptr(AwPngFile) p = source;
   if (!begin(p, error) || !check_form(p, error))
     return NULL;
   take_info(p);
+  if (!check_claim(p, error))
+    return NULL;
   gboolean must_agree = channel < 0 && p->form.n_samples == 3;
   if (!must_agree && !aw_pixels_check_channel(p->name, channel, p->form.n_samples, NULL, error))
     return NULL;
