@@ -16,7 +16,7 @@ typedef struct {
   int frame_width_px, frame_height_px;
 } AwPlacement;
 
-/* For loose images without a pixel size: scan um equal pixels, q = p. */
+/* For loose images without a pixel size: A is minus identity about the first pixel, so that q = p. */
 AwPlacement aw_placement_loose(int width_px, int height_px);
 
 /**
@@ -29,6 +29,25 @@ AwPlacement aw_placement_loose(int width_px, int height_px);
  */
 GPtrArray *aw_measure_nuclei(const AwImage *image, const AwLabels *labels, const AwSegmentInfo *info,
                              const AwPlacement *placement, double saturation_level, GError **error);
+
+/**
+ * aw_measure_masks: the same before placing: everything in px of the image itself, no relations between nuclei
+ * (isolation stays 0). For callers that fit the pixel map first; follow with aw_nucleus_place and aw_measure_relations.
+ */
+GPtrArray *aw_measure_masks(const AwImage *image, const AwLabels *labels, const AwSegmentInfo *info,
+                            double saturation_level, GError **error);
+
+/* Turns a nucleus of aw_measure_masks into frame px and scan um, and sets its border flag. To be called once. */
+void aw_nucleus_place(AwNucleus *nucleus, const AwPlacement *placement);
+
+/**
+ * aw_saturation_level: the pixel value from which pixels of this image count as saturated; 0 when none do.
+ *
+ * It is the largest value of the image when the pixel form ends there, or when at least 16 pixels of a 16-bit image
+ * stand at it and it is the full scale of a camera with fewer bits: 2^k - 1, k >= 8, or those bits at the top of
+ * the 16. Float images have no such level.
+ */
+double aw_saturation_level(const AwImage *image);
 
 /* Sets isolation, area_ratio and the focus flag of every nucleus from all of them. */
 void aw_measure_relations(GPtrArray *nuclei);
