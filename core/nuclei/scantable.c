@@ -10,7 +10,7 @@
 #include "base/text.h"
 
 #define MIN_PIXEL_UM 0.001
-#define MAX_PIXEL_UM 1000.0
+#define MAX_PIXEL_UM 100.0
 
 enum { FILE_NAME, STAGE_X, STAGE_Y, PAGE, CHANNEL, PIXEL, TAKEN_AT, N_COLUMNS };
 
@@ -25,6 +25,21 @@ void aw_scan_row_free(AwScanRow *row)
   g_free(row);
 }
 
+/* A reading in another unit must not pass as a missing or, worse, an unknown column. */
+static gboolean find_other_unit(const AwCsv *csv, const char *wanted, GError **error)
+{
+  for (gsize i = 0; i < aw_csv_n_columns(csv); i++) {
+    const char *heading = aw_csv_heading(csv, i);
+    if (strncmp(heading, wanted, strlen("stage_x")))
+      continue;
+    g_set_error(error, AW_ERROR, AW_ERROR_NOT_FOUND,
+                "%s has no column '%s' but '%s'; convert its values to um and rename it", aw_csv_name(csv), wanted,
+                heading);
+    return TRUE;
+  }
+  return FALSE;
+}
+
 /* Column numbers, -1 where an optional one is absent. */
 static gboolean find_columns(const AwCsv *csv, int column[N_COLUMNS], GError **error)
 {
@@ -32,6 +47,8 @@ static gboolean find_columns(const AwCsv *csv, int column[N_COLUMNS], GError **e
     gsize found;
     column[i] = aw_csv_find(csv, headings[i]);
     if (i <= STAGE_Y || column[i] >= 0) {
+      if (i != FILE_NAME && column[i] < 0 && find_other_unit(csv, headings[i], error))
+        return FALSE;
       if (!aw_csv_need(csv, headings[i], &found, error))
         return FALSE;
       column[i] = (int)found;
@@ -40,11 +57,11 @@ static gboolean find_columns(const AwCsv *csv, int column[N_COLUMNS], GError **e
   return TRUE;
 }
 
-/* A field that is there and not empty; NULL otherwise. */
+/* A field that is there and not blank; NULL otherwise. */
 static const char *optional_text(const AwCsv *csv, gsize row, int column)
 {
   const char *text = column >= 0 ? aw_csv_text(csv, row, (gsize)column) : "";
-  return *text ? text : NULL;
+  return text[strspn(text, " \t")] ? text : NULL;
 }
 
 static gboolean within(const AwCsv *csv, gsize row, int column, double value, double min, double max, GError **error)
@@ -92,23 +109,29 @@ static gboolean read_extras(const AwCsv *csv, gsize row, const int column[N_COLU
   return !time || aw_text_to_time(time, where, &r->taken_at_unix_s, error);
 }
 
-static char *resolve(const char *table, const char *file)
+/* Tables from Windows part folders by backslashes; a path with a drive letter leads nowhere here. */
+static char *read_path(const AwCsv *csv, gsize row, int column, GError **error)
 {
-  g_autofree char *folder = g_path_get_dirname(table);
-  g_autofree char *turned = g_strdelimit(g_strdup(file), "\\", '/');
-  return g_path_is_absolute(turned) ? g_steal_pointer(&turned) : g_build_filename(folder, turned, NULL);
+  const char *text = aw_csv_text(csv, row, (gsize)column), *fault = NULL;
+  g_autofree char *folder = g_path_get_dirname(aw_csv_name(csv));
+  g_autofree char *file = g_strstrip(g_strdelimit(g_strdup(text), "\\", '/'));
+  if (!*file)
+    fault = "names no file";
+  else if (g_ascii_isalpha(file[0]) && file[1] == ':' && file[2] == '/')
+    fault = "is a path of another machine; put the table beside the images and give paths from its folder";
+  if (!fault)
+    return g_path_is_absolute(file) ? g_steal_pointer(&file) : g_build_filename(folder, file, NULL);
+  g_set_error(error, AW_ERROR, AW_ERROR_FORMAT, "%s, line %" G_GSIZE_FORMAT ", column file: '%s' %s", aw_csv_name(csv),
+              aw_csv_line(csv, row), text, fault);
+  return NULL;
 }
 
 static AwScanRow *read_row(const AwCsv *csv, gsize row, const int column[N_COLUMNS], GError **error)
 {
   AwScanRow *r = g_new0(AwScanRow, 1);
-  const char *file = aw_csv_text(csv, row, (gsize)column[FILE_NAME]);
   r->line = aw_csv_line(csv, row);
-  r->path = resolve(aw_csv_name(csv), file);
-  if (!*file)
-    g_set_error(error, AW_ERROR, AW_ERROR_FORMAT, "%s, line %" G_GSIZE_FORMAT ", column file: no file is named",
-                aw_csv_name(csv), r->line);
-  if (*file && read_stage(csv, row, column, &r->stage, error) && read_plane(csv, row, column, r, error) &&
+  r->path = read_path(csv, row, column[FILE_NAME], error);
+  if (r->path && read_stage(csv, row, column, &r->stage, error) && read_plane(csv, row, column, r, error) &&
       read_extras(csv, row, column, r, error))
     return r;
   aw_scan_row_free(r);
@@ -118,7 +141,8 @@ static AwScanRow *read_row(const AwCsv *csv, gsize row, const int column[N_COLUM
 /* The same plane twice would make every nucleus of it a pair. */
 static gboolean note_plane(GHashTable *seen, const char *table, const AwScanRow *r, GError **error)
 {
-  char *key = g_strdup_printf("%d %d %s", r->page, r->channel, r->path);
+  g_autofree char *whole = g_canonicalize_filename(r->path, NULL);
+  char *key = g_strdup_printf("%d %d %s", r->page, r->channel, whole);
   gsize before = GPOINTER_TO_SIZE(g_hash_table_lookup(seen, key));
   g_hash_table_insert(seen, key, GSIZE_TO_POINTER(r->line));
   if (!before)

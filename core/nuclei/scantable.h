@@ -25,7 +25,7 @@ void aw_scan_row_free(AwScanRow *row);
  * Relative paths start from the table's folder. Returns a GPtrArray of AwScanRow in table order. `unknown` (may be
  * NULL) gets the headings that mean nothing here, NULL-terminated, g_strfreev. Errors name file, line, column, value
  * and limit: a missing column, words, commas or NaN for numbers, readings past AW_MAX_COORDINATE_UM, a pixel size
- * outside 0.001 ... 1000 um, a time without zone, one plane named twice, a table without rows or with too many.
+ * outside 0.001 ... 100 um, a time without zone, one plane named twice, a table without rows or with too many.
  */
 GPtrArray *aw_scan_table_read(const char *path, char ***unknown, GError **error);
 

@@ -33,6 +33,19 @@ static gboolean parse_end(const char *text, const char *gate, double open, doubl
   return !*text || aw_text_to_double(text, where, end, error);
 }
 
+/* A range in px must not be taken for one in um. */
+static gboolean parse_feature(const char *text, const char *name, const AwFeature **feature, GError **error)
+{
+  *feature = aw_feature_find(name, error);
+  if (!*feature)
+    return FALSE;
+  g_autofree char *in_um = aw_feature_name(*feature, TRUE);
+  if (!strcmp(name, in_um) || !strcmp(name, (*feature)->stem))
+    return TRUE;
+  g_set_error(error, AW_ERROR, AW_ERROR_RANGE, "gate \"%s\" names the wrong unit; write %s", text, in_um);
+  return FALSE;
+}
+
 gboolean aw_gate_parse(const char *text, AwGate *gate, GError **error)
 {
   const char *equals = strchr(text, '=');
@@ -41,13 +54,19 @@ gboolean aw_gate_parse(const char *text, AwGate *gate, GError **error)
     g_set_error(error, AW_ERROR, AW_ERROR_FORMAT, "gate \"%s\" is not of the form FEATURE=MIN..MAX", text);
     return FALSE;
   }
-  g_autofree char *name = g_strndup(text, (gsize)(equals - text));
-  g_autofree char *min = g_strndup(equals + 1, (gsize)(dots - equals - 1));
-  gate->feature = aw_feature_find(name, error);
-  if (!gate->feature || !parse_end(g_strstrip(min), text, -INFINITY, &gate->min, error) ||
-      !parse_end(dots + 2, text, INFINITY, &gate->max, error))
+  g_autofree char *name = g_strstrip(g_strndup(text, (gsize)(equals - text)));
+  g_autofree char *min = g_strstrip(g_strndup(equals + 1, (gsize)(dots - equals - 1)));
+  g_autofree char *max = g_strstrip(g_strdup(dots + 2));
+  AwGate found = { 0 };
+  if (!parse_feature(text, name, &found.feature, error) || !parse_end(min, text, -INFINITY, &found.min, error) ||
+      !parse_end(max, text, INFINITY, &found.max, error))
     return FALSE;
-  if (gate->min <= gate->max)
+  if (!*min && !*max) {
+    g_set_error(error, AW_ERROR, AW_ERROR_FORMAT, "gate \"%s\" has neither a lower nor an upper end", text);
+    return FALSE;
+  }
+  *gate = found;
+  if (found.min <= found.max)
     return TRUE;
   g_set_error(error, AW_ERROR, AW_ERROR_RANGE, "gate \"%s\": its lower end lies above its upper end", text);
   return FALSE;

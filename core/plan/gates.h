@@ -20,8 +20,9 @@ typedef struct {
 AwGate *aw_gates_default(gsize *n);
 
 /**
- * Reads "FEATURE=MIN..MAX"; either end may be left out. AW_ERROR_NOT_FOUND for an unknown feature (lists all names),
- * AW_ERROR_FORMAT for a text of another form, AW_ERROR_RANGE when MIN lies above MAX.
+ * Reads "FEATURE=MIN..MAX"; either end may be left out. FEATURE is the name in um or the bare stem.
+ * AW_ERROR_NOT_FOUND for an unknown feature (lists all names), AW_ERROR_FORMAT for a text of another form,
+ * AW_ERROR_RANGE when MIN lies above MAX or the feature is named in px.
  */
 gboolean aw_gate_parse(const char *text, AwGate *gate, GError **error);
 

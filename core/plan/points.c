@@ -32,8 +32,8 @@ static gboolean read_coordinate(const AwCsv *csv, gsize row, gsize column, doubl
   if (fabs(*value) <= AW_MAX_COORDINATE_UM)
     return TRUE;
   g_set_error(error, AW_ERROR, AW_ERROR_RANGE,
-              "%s, line %" G_GSIZE_FORMAT ", column %s: %s um is beyond the limit of %.0f um", aw_csv_name(csv),
-              aw_csv_line(csv, row), aw_csv_heading(csv, column), aw_csv_text(csv, row, column), AW_MAX_COORDINATE_UM);
+              "%s, line %" G_GSIZE_FORMAT ", column %s: '%s' is beyond 10000000 um; is it in another unit?",
+              aw_csv_name(csv), aw_csv_line(csv, row), aw_csv_heading(csv, column), aw_csv_text(csv, row, column));
   return FALSE;
 }
 
@@ -127,7 +127,7 @@ gboolean aw_points_write(const AwPoints *points, const guint32 *order, const cha
   const AwCsv *csv = points->csv;
   g_autoptr(GString) out = g_string_new(NULL);
   for (const char *const *comment = aw_csv_comments(csv); *comment; comment++)
-    g_string_append_printf(out, "#%s\n", *comment);
+    g_string_append_printf(out, "# %s\n", *comment);
   for (gsize column = 0; column < aw_csv_n_columns(csv); column++) {
     aw_csv_append(out, aw_csv_heading(csv, column), ',');
     g_string_append_c(out, ',');

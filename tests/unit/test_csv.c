@@ -98,6 +98,25 @@ static void refused(void)
   assert_refused(wide, 10001, AW_ERROR_FORMAT, "more than 10000 fields");
 }
 
+static void without_header(void)
+{
+  static const char *const headings[] = { "x", "y", NULL };
+  GError *error = NULL;
+  g_autoptr(AwCsv) csv = aw_csv_parse_bare("# note\n1;2\n3;\"4\"", 16, "t.csv", ';', headings, &error);
+  g_assert_no_error(error);
+  g_assert_cmpuint(aw_csv_n_columns(csv), ==, 2);
+  g_assert_cmpuint(aw_csv_n_rows(csv), ==, 2);
+  g_assert_cmpstr(aw_csv_comments(csv)[0], ==, "note");
+  g_assert_cmpstr(aw_csv_heading(csv, 0), ==, "x");
+  g_assert_cmpint(aw_csv_find(csv, "y"), ==, 1);
+  g_assert_cmpstr(aw_csv_text(csv, 1, 1), ==, "4");
+  g_assert_cmpuint(aw_csv_line(csv, 0), ==, 2);
+  g_autoptr(AwCsv) empty = aw_csv_parse_bare("", 0, "t.csv", ';', headings, &error);
+  g_assert_cmpuint(aw_csv_n_rows(empty), ==, 0);
+  g_assert_null(aw_csv_parse_bare("1;2\n3\n", 6, "t.csv", ';', headings, &error));
+  aw_check_error(&error, AW_ERROR_FORMAT, "t.csv, line 2: 1 fields where the table has 2");
+}
+
 static void columns(void)
 {
   g_autoptr(AwCsv) csv = parse("x,y\n1,2\n", ',');
@@ -193,6 +212,7 @@ int main(int argc, char **argv)
   aw_check_add("/base/csv/hash_after_header_is_data", hash_after_header_is_data);
   aw_check_add("/base/csv/header_alone", header_alone);
   aw_check_add("/base/csv/refused", refused);
+  aw_check_add("/base/csv/without_header", without_header);
   aw_check_add("/base/csv/columns", columns);
   aw_check_add("/base/csv/numbers", numbers);
   aw_check_add("/base/csv/append", append);
