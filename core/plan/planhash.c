@@ -2,7 +2,7 @@
 #include "base/text.h"
 #include "plan/layout.h"
 
-#define HASH_DECIMALS 4 /* 0.1 nm: finer than any stage, coarser than rounding noise of the arithmetic */
+#define HASH_DECIMALS 3 /* as in the built-in layouts, so that anyone can find the hash again from such a list */
 
 /* docs/formats.md, "Plan hash", defines these bytes; a change of one needs a new version number in the first line. */
 char *aw_plan_canonical_text(const AwTargetRow *rows, gsize n)
