@@ -60,7 +60,6 @@ static gboolean finish(AwRecord *record, AwEntryKind kind, gint64 target_id, con
 {
   if (!store_touched(record, error) ||
       !aw_journal_append(record, kind, target_id, record->operator_name, action, error) ||
-      (kind == AW_ENTRY_DO && !aw_changes_store(record, record->action_id, error)) ||
       !aw_sql_exec(record, "COMMIT", error))
     return abandon(record);
   g_hash_table_remove_all(record->touched);
@@ -72,8 +71,10 @@ static gboolean finish(AwRecord *record, AwEntryKind kind, gint64 target_id, con
 gboolean aw_record_commit(AwRecord *record, const char *action, GError **error)
 {
   g_return_val_if_fail(record && action && record->in_action, FALSE);
-  AwEntryKind kind = record->action_id == 1 ? AW_ENTRY_START : aw_changes_any(record) ? AW_ENTRY_DO : AW_ENTRY_NOTE;
-  return finish(record, kind, 0, action, error);
+  gboolean any = FALSE;
+  if (record->session && !aw_changes_store(record, record->action_id, &any, error))
+    return abandon(record);
+  return finish(record, record->action_id == 1 ? AW_ENTRY_START : any ? AW_ENTRY_DO : AW_ENTRY_NOTE, 0, action, error);
 }
 
 /* The entry to undo or redo: the last of its stack. An empty stack is refused with the reason. */

@@ -33,11 +33,6 @@ void aw_changes_unwatch(AwRecord *record)
   record->session = NULL;
 }
 
-gboolean aw_changes_any(const AwRecord *record)
-{
-  return record->session && !sqlite3session_isempty(record->session);
-}
-
 /* Packs what the session puts out and writes it away part by part. */
 typedef struct {
   AwRecord *record;
@@ -86,15 +81,15 @@ static gboolean store(Packer *packer)
 {
   AwRecord *record = packer->record;
   int code = sqlite3session_changeset_strm(record->session, take_output, packer);
-  if (code == SQLITE_OK)
-    return pack(packer, NULL, 0, Z_FINISH) && write_part(packer);
+  if (code == SQLITE_OK) /* no bytes: rows were touched, but all hold what they held before */
+    return packer->zip.total_in == 0 || (pack(packer, NULL, 0, Z_FINISH) && write_part(packer));
   if (!packer->error || !*packer->error)
     g_set_error(packer->error, AW_ERROR, AW_ERROR_IO, "cannot keep the changes of this action in %s: %s", record->path,
                 sqlite3_errstr(code));
   return FALSE;
 }
 
-gboolean aw_changes_store(AwRecord *record, gint64 journal_id, GError **error)
+gboolean aw_changes_store(AwRecord *record, gint64 journal_id, gboolean *any, GError **error)
 {
   Packer packer = { .record = record, .journal_id = journal_id, .error = error };
   if (deflateInit(&packer.zip, Z_BEST_SPEED) != Z_OK) {
@@ -103,6 +98,7 @@ gboolean aw_changes_store(AwRecord *record, gint64 journal_id, GError **error)
   }
   packer.part = g_byte_array_new();
   gboolean ok = store(&packer);
+  *any = packer.zip.total_in > 0;
   g_byte_array_unref(packer.part);
   deflateEnd(&packer.zip);
   return ok;

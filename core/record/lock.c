@@ -47,7 +47,12 @@ static char *read_holder(int fd)
 static int open_lock_file(const char *path)
 {
   int fd = open(path, O_RDWR | O_CREAT | O_CLOEXEC | O_NOFOLLOW | O_NONBLOCK, 0666);
-  return fd < 0 && errno == EACCES ? open(path, O_RDONLY | O_CLOEXEC | O_NOFOLLOW | O_NONBLOCK) : fd;
+  if (fd >= 0 || errno != EACCES)
+    return fd;
+  fd = open(path, O_RDONLY | O_CLOEXEC | O_NOFOLLOW | O_NONBLOCK);
+  if (fd < 0)
+    errno = EACCES;
+  return fd;
 }
 
 /* TRUE when the locked file is still the one that stands under its name: its last holder removes it. */

@@ -59,16 +59,9 @@ static const AwMigration *find_step(const AwMigration *steps, gsize n_steps, int
 static gboolean run_steps(AwRecord *record, int from, int target, const AwMigration *steps, gsize n_steps,
                           GError **error)
 {
-  for (int version = from; version < target; version++) {
-    const AwMigration *step = find_step(steps, n_steps, version);
-    if (!step) {
-      g_set_error(error, AW_ERROR, AW_ERROR_UNSUPPORTED, "%s has the format version %d, which this Aimwell cannot read",
-                  record->path, version);
+  for (int version = from; version < target; version++)
+    if (!find_step(steps, n_steps, version)->apply(record, error))
       return FALSE;
-    }
-    if (!step->apply(record, error))
-      return FALSE;
-  }
   g_autofree char *stamp = g_strdup_printf("PRAGMA user_version = %d", target);
   g_autofree char *action = g_strdup_printf("Brought the record from format version %d to %d", from, target);
   return aw_sql_exec(record, stamp, error) &&
@@ -78,6 +71,12 @@ static gboolean run_steps(AwRecord *record, int from, int target, const AwMigrat
 
 gboolean aw_migrate(AwRecord *record, int from, int target, const AwMigration *steps, gsize n_steps, GError **error)
 {
+  for (int version = from; version < target; version++)
+    if (!find_step(steps, n_steps, version)) {
+      g_set_error(error, AW_ERROR, AW_ERROR_UNSUPPORTED, "%s has the format version %d, which this Aimwell cannot read",
+                  record->path, from);
+      return FALSE;
+    }
   /* Steps may rebuild tables, so foreign keys are checked once, at the end. */
   if (!keep_before(record, from, error) || !aw_sql_exec(record, "PRAGMA foreign_keys = OFF; BEGIN IMMEDIATE", error))
     return FALSE;

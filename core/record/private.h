@@ -118,10 +118,9 @@ void aw_draft_remove(AwRecord *record);
 /* Starts and ends the watch over the tables that undo covers. */
 gboolean aw_changes_watch(AwRecord *record, GError **error);
 void aw_changes_unwatch(AwRecord *record);
-gboolean aw_changes_any(const AwRecord *record);
 
-/* Keeps the watched changes, packed, as those of journal entry `journal_id`. */
-gboolean aw_changes_store(AwRecord *record, gint64 journal_id, GError **error);
+/* Keeps the watched changes, packed, as those of journal entry `journal_id`; *any tells whether there were any. */
+gboolean aw_changes_store(AwRecord *record, gint64 journal_id, gboolean *any, GError **error);
 
 /* Applies the changes of `journal_id`, or their inverse; any mismatch with the present data is an error. */
 gboolean aw_changes_apply(AwRecord *record, gint64 journal_id, gboolean inverse, GError **error);

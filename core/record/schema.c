@@ -32,7 +32,8 @@ static const char schema[] =
     "END;"
     "CREATE TRIGGER journal_delete BEFORE DELETE ON journal BEGIN SELECT RAISE(ABORT, 'the journal is append-only'); "
     "END;"
-    "CREATE TABLE change(journal INTEGER NOT NULL REFERENCES journal(id), part INTEGER NOT NULL, packed BLOB NOT NULL,"
+    "CREATE TABLE change(journal INTEGER NOT NULL REFERENCES journal(id) DEFERRABLE INITIALLY DEFERRED, part INTEGER "
+    "NOT NULL, packed BLOB NOT NULL,"
     " PRIMARY KEY(journal, part)) STRICT;";
 
 char *aw_schema_sql(void)

@@ -25,9 +25,9 @@ static AwErrorCode error_code(int sqlite_code)
   }
 }
 
-static const char *plain_words(int sqlite_code, const char *sqlite_text)
+static const char *plain_words(sqlite3 *db)
 {
-  switch (sqlite_code & 0xff) {
+  switch (sqlite3_errcode(db) & 0xff) {
   case SQLITE_BUSY:
     return "another program kept it busy for too long";
   case SQLITE_FULL:
@@ -35,15 +35,14 @@ static const char *plain_words(int sqlite_code, const char *sqlite_text)
   case SQLITE_NOTADB:
     return "it is not a dish record";
   default:
-    return sqlite_text;
+    return sqlite3_errmsg(db);
   }
 }
 
 gboolean aw_sql_fail(sqlite3 *db, const char *what, const char *path, GError **error)
 {
-  int code = db ? sqlite3_errcode(db) : SQLITE_NOMEM;
-  const char *text = db ? sqlite3_errmsg(db) : "out of memory";
-  g_set_error(error, AW_ERROR, (int)error_code(code), "cannot %s %s: %s", what, path, plain_words(code, text));
+  AwErrorCode code = db ? error_code(sqlite3_errcode(db)) : AW_ERROR_MEMORY;
+  g_set_error(error, AW_ERROR, (int)code, "cannot %s %s: %s", what, path, db ? plain_words(db) : "not enough memory");
   return FALSE;
 }
 

@@ -6,6 +6,10 @@
 
 /* Small invented dish records for tests. All of it is deterministic. */
 
+/* Lets scratch folders stand in memory where the machine has such a place: hundreds of commits each wait for the disk
+ * otherwise. For tests that do not ask what the disk keeps; before g_test_run. */
+void aw_test_use_memory(void);
+
 /* n frames in a row, 100 um apart, files "images/frame_N.tif" with made-up hashes. */
 GPtrArray *aw_test_frames(guint n);
 

@@ -317,6 +317,7 @@ static void test_identify(Dish *dish, gconstpointer ignored)
 int main(int argc, char **argv)
 {
   g_test_init(&argc, &argv, NULL);
+  aw_test_use_memory();
 #define ADD(name, fn) g_test_add("/record/files/" name, Dish, NULL, set_up, fn, tear_down)
   ADD("same", test_same);
   ADD("size", test_size);

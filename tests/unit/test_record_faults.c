@@ -1,0 +1,448 @@
+/* Aimwell - SPDX-License-Identifier: GPL-3.0-or-later */
+/* Killed writers, several processes at once, read-only places, full disks. */
+#include <grp.h>
+#include <signal.h>
+#include <string.h>
+#include <sys/mount.h>
+#include <sys/resource.h>
+#include <sys/stat.h>
+#include <sys/wait.h>
+#include <unistd.h>
+
+#include "base/random.h"
+#include "record/private.h"
+#include "support/check.h"
+#include "support/dish.h"
+
+#define N_KILLS 25
+#define NOBODY 65534
+
+typedef struct {
+  char *folder, *path;
+} Place;
+
+static void set_up(Place *place, gconstpointer ignored)
+{
+  (void)ignored;
+  place->folder = aw_scratch_new();
+  place->path = g_build_filename(place->folder, "dish.dish", NULL);
+}
+
+static void tear_down(Place *place, gconstpointer ignored)
+{
+  (void)ignored;
+  aw_scratch_remove(place->folder);
+  g_free(place->path);
+}
+
+static AwRecord *open_or_fail(const char *path, AwRecordMode mode)
+{
+  GError *error = NULL;
+  AwRecord *record = aw_record_open(path, mode, &error);
+  g_assert_no_error(error);
+  return record;
+}
+
+/* --- killed while writing --- */
+
+static gboolean one_action(AwRecord *record, gint64 n)
+{
+  if (n % 5 == 3)
+    return aw_record_undo(record, "ada", NULL, NULL);
+  if (n % 5 == 4)
+    return aw_record_redo(record, "ada", NULL, NULL);
+  g_autoptr(GPtrArray) nuclei = aw_test_nuclei(30 + (guint)(n % 50), 1 + n % 7, 3);
+  g_autofree char *name = g_strdup_printf("dish %d", (int)n);
+  return aw_record_begin(record, "ada", NULL) && aw_record_set_nuclei(record, nuclei, NULL) &&
+         aw_record_set_fact(record, "name", name, NULL) && aw_record_commit(record, name, NULL);
+}
+
+/* Acts until killed, and reports the number of the journal entry after each commit. */
+static void act_for_ever(const char *path, int report)
+{
+  g_autoptr(AwRecord) record = open_or_fail(path, AW_RECORD_WRITE);
+  gint64 n = 0;
+  g_assert_true(aw_journal_next_id(record, &n, NULL));
+  for (;; n++)
+    if (!one_action(record, n) || write(report, &n, sizeof n) != (gssize)sizeof n)
+      _exit(1);
+}
+
+/* Creates record after record until killed, and reports each. */
+static void create_for_ever(const char *folder, int report)
+{
+  for (gint64 n = 0;; n++) {
+    g_autofree char *sub = g_strdup_printf("%s/%d", folder, (int)n);
+    if (mkdir(sub, 0777) != 0)
+      continue; /* made in an earlier round */
+    aw_record_free(aw_test_dish_new(sub));
+    if (write(report, &n, sizeof n) != (gssize)sizeof n)
+      _exit(1);
+  }
+}
+
+/* Runs `work` in a child, kills it after a random time and gives the last number it reported, or 0. */
+static gint64 kill_midway(void (*work)(const char *, int), const char *path, AwRandom *random)
+{
+  int ends[2];
+  g_assert_cmpint(pipe(ends), ==, 0);
+  pid_t child = fork();
+  g_assert_cmpint(child, >=, 0);
+  if (child == 0) {
+    close(ends[0]);
+    work(path, ends[1]);
+    _exit(1);
+  }
+  close(ends[1]);
+  gint64 last = 0, n;
+  g_assert_cmpint(read(ends[0], &n, sizeof n), ==, sizeof n); /* it runs: now any moment will do */
+  last = n;
+  g_usleep(aw_random_below(random, 150000));
+  g_assert_cmpint(kill(child, SIGKILL), ==, 0);
+  while (read(ends[0], &n, sizeof n) == (gssize)sizeof n)
+    last = n;
+  close(ends[0]);
+  int status;
+  g_assert_cmpint(waitpid(child, &status, 0), ==, child);
+  g_assert_true(WIFSIGNALED(status));
+  return last;
+}
+
+static void test_kill(Place *place, gconstpointer ignored)
+{
+  (void)ignored;
+  GError *error = NULL;
+  AwRandom random = aw_random_stream(g_test_rand_int() & 0xff, 0);
+  aw_record_free(aw_test_dish_new(place->folder));
+  for (int round = 0; round < N_KILLS; round++) {
+    gint64 reported = kill_midway(act_for_ever, place->path, &random);
+    g_autoptr(AwRecord) record = open_or_fail(place->path, round % 2 ? AW_RECORD_WRITE : AW_RECORD_READ);
+    g_assert_true(aw_record_check(record, &error));
+    g_assert_no_error(error);
+    g_autoptr(GPtrArray) journal = aw_record_journal(record, &error);
+    g_assert_no_error(error);
+    /* All that was reported is there, and at most the one action that was not yet reported. */
+    g_assert_cmpint(journal->len, >=, reported);
+    g_assert_cmpint(journal->len, <=, reported + 1);
+    g_autofree char *dump = aw_test_dish_dump(record);
+  }
+}
+
+static void test_kill_creating(Place *place, gconstpointer ignored)
+{
+  (void)ignored;
+  GError *error = NULL;
+  AwRandom random = aw_random_stream(g_test_rand_int() & 0xff, 1);
+  guint n_found = 0;
+  for (int round = 0; round < 8; round++) {
+    gint64 reported = kill_midway(create_for_ever, place->folder, &random);
+    for (gint64 n = 0;; n++) {
+      g_autofree char *sub = g_strdup_printf("%s/%d", place->folder, (int)n);
+      g_autofree char *path = g_build_filename(sub, "dish.dish", NULL);
+      if (!g_file_test(sub, G_FILE_TEST_IS_DIR))
+        break;
+      gboolean exists = g_file_test(path, G_FILE_TEST_EXISTS);
+      g_assert_true(exists || n != reported);
+      if (!exists) { /* killed before the first commit: starting anew works */
+        aw_record_free(aw_test_dish_new(sub));
+        continue;
+      }
+      n_found++;
+      g_autoptr(AwRecord) record = open_or_fail(path, AW_RECORD_READ);
+      g_assert_true(aw_record_check(record, &error));
+      g_autofree char *name = aw_record_fact(record, "name", &error);
+      g_assert_cmpstr(name, ==, "dish");
+    }
+  }
+  g_assert_cmpuint(n_found, >, 8);
+}
+
+/* --- several at once --- */
+
+static void test_two_writers(Place *place, gconstpointer ignored)
+{
+  (void)ignored;
+  GError *error = NULL;
+  AwRecord *first = aw_test_dish_new(place->folder);
+  g_autofree char *holder =
+      g_strdup_printf("dish.dish is open for writing elsewhere|%s|process %ld", g_get_user_name(), (long)getpid());
+  g_assert_null(aw_record_open(place->path, AW_RECORD_WRITE, &error));
+  aw_check_error(&error, AW_ERROR_LOCKED, holder);
+  aw_record_free(open_or_fail(place->path, AW_RECORD_READ));
+  aw_record_free(first);
+  aw_record_free(open_or_fail(place->path, AW_RECORD_WRITE));
+  g_assert_cmpint(aw_scratch_count(place->folder), ==, 1);
+}
+
+static void test_two_creators(Place *place, gconstpointer ignored)
+{
+  (void)ignored;
+  GError *error = NULL;
+  g_autoptr(AwRecord) first = aw_record_create(place->path, &error);
+  g_assert_null(aw_record_create(place->path, &error));
+  aw_check_error(&error, AW_ERROR_LOCKED, "dish.dish");
+  g_assert_true(aw_record_begin(first, "ada", &error) && aw_record_commit(first, "start", &error));
+}
+
+static void test_reader_sees_last_commit(Place *place, gconstpointer ignored)
+{
+  (void)ignored;
+  GError *error = NULL;
+  g_autoptr(AwRecord) writer = aw_test_dish_new(place->folder);
+  g_autoptr(AwRecord) reader = open_or_fail(place->path, AW_RECORD_READ);
+  g_assert_true(aw_record_begin(writer, "ada", &error) && aw_record_set_fact(writer, "name", "new", &error));
+  g_autofree char *before = aw_record_fact(reader, "name", &error);
+  g_assert_cmpstr(before, ==, "dish");
+  g_assert_true(aw_record_commit(writer, "rename", &error));
+  g_autofree char *after = aw_record_fact(reader, "name", &error);
+  g_assert_cmpstr(after, ==, "new");
+}
+
+/* A reader that never ends makes the commit fail, not hang, and the action is rolled back whole. */
+static void test_stubborn_reader(Place *place, gconstpointer ignored)
+{
+  (void)ignored;
+  GError *error = NULL;
+  g_autoptr(AwRecord) writer = aw_test_dish_new(place->folder);
+  g_autoptr(AwRecord) reader = open_or_fail(place->path, AW_RECORD_READ);
+  sqlite3_busy_timeout(writer->db, 50);
+  g_assert_true(aw_record_read_begin(reader, &error));
+  g_assert_true(aw_record_begin(writer, "ada", &error) && aw_record_set_fact(writer, "name", "new", &error));
+  g_assert_false(aw_record_commit(writer, "rename", &error));
+  aw_check_error(&error, AW_ERROR_LOCKED, "kept it busy for too long");
+  aw_record_read_end(reader);
+  g_autofree char *name = aw_record_fact(writer, "name", &error);
+  g_assert_cmpstr(name, ==, "dish");
+  g_assert_true(aw_record_begin(writer, "ada", &error) && aw_record_set_fact(writer, "name", "new", &error) &&
+                aw_record_commit(writer, "rename", &error));
+}
+
+static int expect_success(void (*work)(const char *), const char *path)
+{
+  pid_t child = fork();
+  if (child == 0) {
+    work(path);
+    _exit(0);
+  }
+  int status = 0;
+  g_assert_cmpint(waitpid(child, &status, 0), ==, child);
+  return status;
+}
+
+static void write_pairs(const char *path)
+{
+  g_autoptr(AwRecord) record = open_or_fail(path, AW_RECORD_WRITE);
+  for (int i = 0; i < 40; i++) {
+    g_autofree char *value = g_strdup_printf("%d", i);
+    if (!aw_record_begin(record, "ada", NULL) || !aw_record_set_fact(record, "a", value, NULL) ||
+        !aw_record_set_fact(record, "b", value, NULL) || !aw_record_commit(record, "pair", NULL))
+      _exit(1);
+  }
+}
+
+/* While another process commits, two reads within one transaction always fit together. */
+static void test_reading_while_writing(Place *place, gconstpointer ignored)
+{
+  (void)ignored;
+  GError *error = NULL;
+  aw_record_free(aw_test_dish_new(place->folder));
+  g_autoptr(AwRecord) reader = NULL;
+  pid_t child = fork();
+  if (child == 0) {
+    write_pairs(place->path);
+    _exit(0);
+  }
+  reader = open_or_fail(place->path, AW_RECORD_READ);
+  int status = 0, n_reads = 0;
+  for (; waitpid(child, &status, WNOHANG) == 0; n_reads++) {
+    g_assert_true(aw_record_read_begin(reader, &error));
+    g_autofree char *a = aw_record_fact(reader, "a", &error);
+    g_autofree char *b = aw_record_fact(reader, "b", &error);
+    aw_record_read_end(reader);
+    g_assert_no_error(error);
+    g_assert_cmpstr(a, ==, b);
+    g_usleep(500);
+  }
+  g_assert_cmpint(status, ==, 0);
+  g_assert_cmpint(n_reads, >, 3);
+  g_autofree char *last = aw_record_fact(reader, "a", &error);
+  g_assert_cmpstr(last, ==, "39");
+}
+
+/* --- read-only places, as an ordinary user --- */
+
+/* Root may write anywhere, so a root run continues as nobody. */
+static void become_ordinary(void)
+{
+  if (geteuid() == 0 && (setgroups(0, NULL) != 0 || setgid(NOBODY) != 0 || setuid(NOBODY) != 0))
+    _exit(1);
+}
+
+static void give_away(const char *path, mode_t mode)
+{
+  g_assert_cmpint(chmod(path, mode), ==, 0);
+  if (geteuid() == 0)
+    g_assert_cmpint(chown(path, NOBODY, NOBODY), ==, 0);
+}
+
+static void read_it(const char *path)
+{
+  g_autoptr(AwRecord) record = open_or_fail(path, AW_RECORD_READ);
+  g_autofree char *dump = aw_test_dish_dump(record);
+  g_assert_true(strlen(dump) > 100);
+}
+
+static void try_read_only_folder(const char *path)
+{
+  GError *error = NULL;
+  become_ordinary();
+  read_it(path);
+  g_assert_null(aw_record_open(path, AW_RECORD_WRITE, &error));
+  aw_check_error(&error, AW_ERROR_IO, "cannot write|does not take a lock file|Permission denied");
+  g_autofree char *folder = g_path_get_dirname(path);
+  g_autofree char *other = g_build_filename(folder, "other.dish", NULL);
+  g_assert_null(aw_record_create(other, &error));
+  aw_check_error(&error, AW_ERROR_IO, "other.dish|Permission denied");
+}
+
+static void test_read_only_folder(Place *place, gconstpointer ignored)
+{
+  (void)ignored;
+  aw_record_free(aw_test_dish_new(place->folder));
+  give_away(place->path, 0644);
+  give_away(place->folder, 0555);
+  g_assert_cmpint(expect_success(try_read_only_folder, place->path), ==, 0);
+  g_assert_cmpint(chmod(place->folder, 0755), ==, 0);
+}
+
+static void try_read_only_file(const char *path)
+{
+  GError *error = NULL;
+  become_ordinary();
+  read_it(path);
+  g_assert_null(aw_record_open(path, AW_RECORD_WRITE, &error));
+  aw_check_error(&error, AW_ERROR_IO, "cannot write|the file is read-only for you");
+}
+
+static void test_read_only_file(Place *place, gconstpointer ignored)
+{
+  (void)ignored;
+  aw_record_free(aw_test_dish_new(place->folder));
+  give_away(place->path, 0444);
+  give_away(place->folder, 0755);
+  g_assert_cmpint(expect_success(try_read_only_file, place->path), ==, 0);
+  g_assert_cmpint(aw_scratch_count(place->folder), ==, 1);
+}
+
+static void try_writing(const char *path)
+{
+  become_ordinary();
+  g_autoptr(AwRecord) record = open_or_fail(path, AW_RECORD_WRITE);
+  aw_test_dish_segment(record, 1);
+}
+
+/* A lock file that a killed process of someone else left behind holds nobody up. */
+static void test_stale_lock_of_another(Place *place, gconstpointer ignored)
+{
+  (void)ignored;
+  g_autofree char *lock = g_strconcat(place->path, ".lock", NULL);
+  aw_record_free(aw_test_dish_new(place->folder));
+  g_assert_true(g_file_set_contents(lock, "someone\n", -1, NULL));
+  g_assert_cmpint(chmod(lock, 0444), ==, 0);
+  give_away(place->path, 0644);
+  give_away(place->folder, 0755);
+  g_assert_cmpint(expect_success(try_writing, place->path), ==, 0);
+}
+
+/* --- no room --- */
+
+/* Tries an action too large for the disk; afterwards the record is as it was and takes smaller ones. */
+static void overfill(AwRecord *record, const char *expected)
+{
+  GError *error = NULL;
+  g_autofree char *before = aw_test_dish_dump(record);
+  g_autoptr(GPtrArray) nuclei = aw_test_nuclei(20000, 1, 3);
+  gboolean ok = aw_record_begin(record, "ada", &error) && aw_record_set_nuclei(record, nuclei, &error) &&
+                aw_record_commit(record, "segment", &error);
+  g_assert_false(ok);
+  aw_record_rollback(record);
+  aw_check_error(&error, AW_ERROR_IO, expected);
+  g_autofree char *after = aw_test_dish_dump(record);
+  g_assert_cmpstr(before, ==, after);
+  g_assert_true(aw_record_check(record, &error));
+  aw_test_dish_segment(record, 2);
+}
+
+static void overfill_limited(const char *path)
+{
+  const struct rlimit limit = { 1 << 20, RLIM_INFINITY };
+  g_autoptr(AwRecord) record = open_or_fail(path, AW_RECORD_WRITE);
+  signal(SIGXFSZ, SIG_IGN);
+  g_assert_cmpint(setrlimit(RLIMIT_FSIZE, &limit), ==, 0);
+  overfill(record, "cannot write|dish.dish|disk I/O error");
+}
+
+static void test_file_size_limit(Place *place, gconstpointer ignored)
+{
+  (void)ignored;
+  GError *error = NULL;
+  aw_record_free(aw_test_dish_new(place->folder));
+  g_assert_cmpint(expect_success(overfill_limited, place->path), ==, 0);
+  g_autoptr(AwRecord) record = open_or_fail(place->path, AW_RECORD_READ);
+  g_assert_true(aw_record_check(record, &error));
+}
+
+static void test_full_disk(Place *place, gconstpointer ignored)
+{
+  (void)ignored;
+  if (geteuid() != 0 || mount("tmpfs", place->folder, "tmpfs", 0, "size=1m") != 0) {
+    g_test_skip("a small file system cannot be mounted here");
+    return;
+  }
+  AwRecord *record = aw_test_dish_new(place->folder);
+  overfill(record, "cannot write|dish.dish|the disk is full");
+  aw_record_free(record);
+  g_assert_cmpint(umount(place->folder), ==, 0);
+}
+
+/* No room for the very first commit: nothing appears under the name. */
+static void create_limited(const char *path)
+{
+  GError *error = NULL;
+  const struct rlimit limit = { 1 << 17, RLIM_INFINITY };
+  signal(SIGXFSZ, SIG_IGN);
+  g_assert_cmpint(setrlimit(RLIMIT_FSIZE, &limit), ==, 0);
+  g_autoptr(AwRecord) record = aw_record_create(path, &error);
+  g_assert_no_error(error);
+  g_autofree char *text = g_strnfill(1 << 18, 'x');
+  g_assert_true(aw_record_begin(record, "ada", &error) && aw_record_set_fact(record, "name", text, &error));
+  g_assert_false(aw_record_commit(record, "start", &error));
+  aw_check_error(&error, AW_ERROR_IO, "dish.dish");
+}
+
+static void test_no_room_to_create(Place *place, gconstpointer ignored)
+{
+  (void)ignored;
+  g_assert_cmpint(expect_success(create_limited, place->path), ==, 0);
+  g_assert_cmpint(aw_scratch_count(place->folder), ==, 0);
+}
+
+int main(int argc, char **argv)
+{
+  g_test_init(&argc, &argv, NULL);
+#define ADD(name, fn) g_test_add("/record/faults/" name, Place, NULL, set_up, fn, tear_down)
+  ADD("kill", test_kill);
+  ADD("kill-creating", test_kill_creating);
+  ADD("two-writers", test_two_writers);
+  ADD("two-creators", test_two_creators);
+  ADD("reader-sees-last-commit", test_reader_sees_last_commit);
+  ADD("stubborn-reader", test_stubborn_reader);
+  ADD("reading-while-writing", test_reading_while_writing);
+  ADD("read-only-folder", test_read_only_folder);
+  ADD("read-only-file", test_read_only_file);
+  ADD("stale-lock-of-another", test_stale_lock_of_another);
+  ADD("file-size-limit", test_file_size_limit);
+  ADD("full-disk", test_full_disk);
+  ADD("no-room-to-create", test_no_room_to_create);
+  return g_test_run();
+}
