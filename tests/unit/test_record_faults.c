@@ -237,6 +237,7 @@ static void write_pairs(const char *path)
     if (!aw_record_begin(record, "ada", NULL) || !aw_record_set_fact(record, "a", value, NULL) ||
         !aw_record_set_fact(record, "b", value, NULL) || !aw_record_commit(record, "pair", NULL))
       _exit(1);
+    g_usleep(3000);
   }
 }
 
