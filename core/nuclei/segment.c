@@ -23,13 +23,14 @@ const AwSegmentRules aw_segment_rules = {
   .piece_saddle = 0.01,
   .piece_blur = 0.06,
   .blob_weight = 1,
-  .merge_bias = 0,
-  .outline_level = 0.43,
+  .merge_bias = 0.3,
+  .outline_shift = 0,
   .ring_from = 0.2,
   .ring_to = 0.6,
   .ring_quantile = 0.5,
   .smallest_area = 0.06,
-  .least_confidence = 0,
+  .debris_confidence = 0.4,
+  .debris_area = 0.8,
 };
 
 void aw_segmentation_free(AwSegmentation *s)
@@ -72,8 +73,8 @@ static void clear_work(AwSegmentWork *w)
   aw_plane_free(w->cut);
   g_free(w->mask);
   aw_labels_free(w->labels);
-  if (w->neck)
-    g_array_free(w->neck, TRUE);
+  if (w->objects)
+    g_array_free(w->objects, TRUE);
 }
 G_DEFINE_AUTO_CLEANUP_CLEAR_FUNC(AwSegmentWork, clear_work)
 
@@ -153,8 +154,8 @@ AwSegmentation *aw_segment_run(const AwImage *image, const AwSegmentSettings *se
   w.labels = aw_labels_new(image->width_px, image->height_px, error);
   if (!w.labels)
     return NULL;
-  w.neck = g_array_new(FALSE, TRUE, sizeof(double));
-  g_array_set_size(w.neck, 1);
+  w.objects = g_array_new(FALSE, TRUE, sizeof(AwObject));
+  g_array_set_size(w.objects, 1);
   if (!stages(&w, image, progress, error))
     return NULL;
   AwSegmentInfo *info = aw_segment_infos(&w, error);

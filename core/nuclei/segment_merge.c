@@ -114,6 +114,7 @@ void aw_pieces_build(AwPieces *p, const AwCluster *c)
   g_autofree GArray **corners = g_new(GArray *, p->n + 1);
   for (guint32 k = 1; k <= p->n; k++) {
     p->piece[k].parent = k;
+    p->piece[k].merge_odds = 8;
     p->piece[k].blob_peak = p->piece[k].land_peak = -FLT_MAX;
     corners[k] = g_array_new(FALSE, FALSE, sizeof(AwCorner));
   }
@@ -144,6 +145,7 @@ static AwPiece unite(const AwPiece *a, const AwPiece *b, float top)
                 .distance_peak = MAX(a->distance_peak, b->distance_peak),
                 .blob_peak = MAX(a->blob_peak, b->blob_peak),
                 .land_peak = MAX(a->land_peak, b->land_peak),
+                .merge_odds = MIN(a->merge_odds, b->merge_odds),
                 .home = a->moments.n >= b->moments.n ? a->home : b->home };
   u.hull = g_new(AwCorner, a->n_hull + b->n_hull);
   memcpy(u.hull, a->hull, a->n_hull * sizeof *u.hull);
@@ -203,10 +205,11 @@ static void add_link(AwLink *to, const AwLink *from)
 }
 
 /* Piece b becomes part of a: its links move over, double ones are added up, touched ones judged again. */
-static void merge(AwPieces *p, guint32 a, guint32 b, const AwSegmentWork *w)
+static void merge(AwPieces *p, guint32 a, guint32 b, double odds, const AwSegmentWork *w)
 {
   AwPiece u = unite(&p->piece[a], &p->piece[b], p->top);
   u.parent = a;
+  u.merge_odds = MIN(u.merge_odds, odds);
   g_free(p->piece[a].hull);
   p->piece[a] = u;
   p->piece[b].parent = a;
@@ -250,6 +253,6 @@ void aw_pieces_merge(AwPieces *p, const AwSegmentWork *w)
     }
     if (!best)
       return;
-    merge(p, best->a, best->b, w);
+    merge(p, best->a, best->b, best->merge_odds, w);
   }
 }

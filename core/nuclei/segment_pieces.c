@@ -97,24 +97,33 @@ static void find_homes(AwPieces *p, const AwCluster *c, const AwSegmentWork *w)
   }
 }
 
+/* What the pieces say of the objects they became. */
+static void note_links(AwSegmentWork *w, const AwPieces *p, const guint32 *number)
+{
+  for (guint i = 0; i < p->links->len; i++) {
+    const AwLink *l = &g_array_index(p->links, AwLink, i);
+    if (l->a == l->b)
+      continue;
+    double neck = (double)l->clear_saddle / MAX(MIN(p->piece[l->a].plateau, p->piece[l->b].plateau), 1e-30);
+    guint32 ends[2] = { l->a, l->b };
+    for (int e = 0; e < 2; e++) {
+      AwObject *o = aw_segment_object(w, number[ends[e]]);
+      o->neck = MAX(o->neck, neck);
+      o->split_odds = MAX(o->split_odds, l->merge_odds);
+    }
+  }
+}
+
 static void write_objects(AwSegmentWork *w, const AwCluster *c, const AwPieces *p)
 {
   g_autofree guint32 *number = g_new0(guint32, p->n + 1);
   for (guint32 k = 1; k <= p->n; k++)
     if (p->piece[k].parent == k) {
       number[k] = ++w->labels->n_labels;
-      double none = 0;
-      g_array_append_val(w->neck, none);
+      AwObject o = { .split_odds = -8, .merge_odds = p->piece[k].merge_odds };
+      g_array_append_val(w->objects, o);
     }
-  for (guint i = 0; i < p->links->len; i++) {
-    const AwLink *l = &g_array_index(p->links, AwLink, i);
-    if (l->a == l->b)
-      continue;
-    double neck = (double)l->clear_saddle / MIN(p->piece[l->a].plateau, p->piece[l->b].plateau);
-    double *na = &g_array_index(w->neck, double, number[l->a]), *nb = &g_array_index(w->neck, double, number[l->b]);
-    *na = MAX(*na, neck);
-    *nb = MAX(*nb, neck);
-  }
+  note_links(w, p, number);
   for (guint32 k = 1; k <= p->n; k++)
     number[k] = number[aw_pieces_root(p, k)];
   for (int y = 0; y < c->height; y++) {

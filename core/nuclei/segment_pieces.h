@@ -25,6 +25,7 @@ typedef struct {
   AwCorner *hull;
   gsize n_hull;
   double convexity, ellipse, plateau;
+  double merge_odds; /* log-odds of the least certain merge inside; 8 when there was none */
   AwShades shades;
   float distance_peak, blob_peak, land_peak;
   guint32 home; /* true label of most of its pixels, when fitting */

@@ -26,29 +26,55 @@ typedef struct {
   double piece_blur;         /* smoothing of the distance, R */
   double blob_weight;        /* blob against distance in the piece landscape */
   double merge_bias;         /* added to the merge log-odds */
-  double outline_level;      /* final outline between ring background and plateau */
+  double outline_shift;      /* added to the level of every outline */
   double ring_from, ring_to; /* ring of the local background, R from the nucleus */
   double ring_quantile;
-  double smallest_area; /* of a nucleus, over pi R^2 */
-  double least_confidence;
+  double smallest_area;     /* of a nucleus, over pi R^2 */
+  double debris_confidence; /* dropped is what is less certain than this ... */
+  double debris_area;       /* ... and smaller than this, over pi R^2 */
 } AwSegmentRules;
 
 extern const AwSegmentRules aw_segment_rules;
 
+/* A shape by its sums; coordinates are pixel centres. */
+typedef struct {
+  double n, sx, sy, sxx, sxy, syy;
+} AwMoments;
+
 #define AW_MAX_FEATURES 24
 #define AW_N_PAIR_FEATURES 14
-#define AW_N_OBJECT_FEATURES 14
+#define AW_N_OUTLINE_FEATURES 4
+#define AW_N_OBJECT_FEATURES 16
 
 /* For fitting the decisions: true labels of every pixel and where to send what was seen. All NULL in normal use. */
+typedef struct AwSegmentWork AwSegmentWork;
+
 typedef struct {
   const guint32 *truth;
   gboolean follow_truth; /* merge as the truth says */
   void (*pair)(const double *feature, gboolean same, double n_px, gpointer data);
+  void (*outline)(const AwSegmentWork *w, const double *feature, guint32 label, double background, double plateau,
+                  gpointer data);
   void (*object)(const double *feature, guint32 label, gpointer data);
   gpointer data;
 } AwSegmentProbe;
 
+/* What is known of one label. Brightness in image units, lengths in px of the full grid. */
 typedef struct {
+  AwRect box;
+  double neck;       /* strongest saddle towards a touching neighbour over the lower plateau */
+  double split_odds; /* log-odds of being one with a neighbour that it was kept apart from; the largest */
+  double merge_odds; /* log-odds of the least certain merge inside */
+  double background, plateau, cut;
+  double n_px;                        /* first outline */
+  double n_edge, slope, slope_square; /* free edge pixels, and sums over their slopes per px */
+  double n_ring, ring_spread;         /* pixels of the background ring, and their 80 % range */
+  AwMoments shape;                    /* final outline */
+  double confidence;
+  double convexity, n_touching; /* of it; its edge pixels beside another label */
+} AwObject;
+
+struct AwSegmentWork {
   const AwSegmentRules *rules;
   const AwSegmentSettings *settings;
   const AwSegmentProbe *probe; /* or NULL */
@@ -61,8 +87,8 @@ typedef struct {
   AwPlane *cut;     /* first threshold per coarse pixel, over zero, image units; huge outside every zone */
   guint8 *mask;     /* full grid, first outline */
   AwLabels *labels; /* full grid, the result */
-  GArray *neck;     /* double per label: strongest saddle over the lower plateau */
-} AwSegmentWork;
+  GArray *objects;  /* AwObject per label; entry 0 unused */
+};
 
 /* Fills the scale from the image's own nuclei. */
 gboolean aw_segment_measure_scale(AwSegmentWork *w, const AwImage *image, GError **error);
@@ -79,8 +105,18 @@ gboolean aw_segment_zones(AwSegmentWork *w, GError **error);
 /* Mask to labels: parts touching nuclei into pieces and merges what belongs together. */
 gboolean aw_segment_pieces(AwSegmentWork *w, GError **error);
 
+/* Background, plateau and outline level of every label. */
+gboolean aw_segment_levels(AwSegmentWork *w, GError **error);
+
+/* Counts the pixels, free and touching edge pixels of every label and sums the slopes of the free ones. */
+void aw_segment_edges(const AwSegmentWork *w);
+
 /* Final outlines; drops what is too small; numbers labels in scan order. Then info and confidence. */
 gboolean aw_segment_outlines(AwSegmentWork *w, GError **error);
+
+/* Numbers the labels in scan order, those marked in `drop` (or NULL) removed, the objects along with them. */
+void aw_segment_renumber(AwSegmentWork *w, const guint8 *drop);
+
 AwSegmentInfo *aw_segment_infos(AwSegmentWork *w, GError **error);
 
 /* The whole run with other rules and a probe. */
@@ -88,10 +124,11 @@ AwSegmentation *aw_segment_run(const AwImage *image, const AwSegmentSettings *se
                                const AwSegmentRules *rules, const AwSegmentProbe *probe, AwProgress *progress,
                                GError **error);
 
-/* A shape by its sums; coordinates are pixel centres. */
-typedef struct {
-  double n, sx, sy, sxx, sxy, syy;
-} AwMoments;
+/* Log-odds that the object is one whole nucleus, rightly outlined. */
+double aw_object_odds(const double feature[AW_N_OBJECT_FEATURES]);
+
+/* Where between background (0) and plateau (1) the outline is drawn. */
+double aw_outline_level(const double feature[AW_N_OUTLINE_FEATURES]);
 
 static inline void aw_moments_add_run(AwMoments *m, double y, double x0, double x1)
 {
@@ -115,6 +152,17 @@ double aw_moments_elongation(const AwMoments *m);
 typedef struct {
   gint32 x, y;
 } AwCorner;
+
+static inline AwObject *aw_segment_object(const AwSegmentWork *w, guint32 label)
+{
+  return &g_array_index(w->objects, AwObject, label);
+}
+
+/* Width of the free edge, what the pixels themselves blur taken off, over R. */
+double aw_object_edge_width(const AwSegmentWork *w, const AwObject *o);
+
+/* Slope of the smoothed image at a pixel, image units per px. */
+double aw_segment_slope(const AwPlane *plane, gsize at);
 
 /* Convex hull of n points in place; returns the number of corners (Andrew's monotone chain). */
 gsize aw_hull(AwCorner *point, gsize n);
