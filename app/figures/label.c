@@ -45,19 +45,31 @@ static PangoLayout *make_layout(cairo_t *cr, const AwLabel *label, const char *t
   return layout;
 }
 
-double aw_label_draw(cairo_t *cr, const AwLabel *label, const char *text, double x, double y)
+double aw_label_draw_on(cairo_t *cr, const AwLabel *label, const AwPatchInk *patch, const char *text, double x,
+                        double y)
 {
   g_return_val_if_fail(text, 0);
   PangoLayout *layout = make_layout(cr, label, text);
   PangoRectangle ext;
   pango_layout_get_extents(layout, NULL, &ext);
-  double width = (double)ext.width / PANGO_SCALE, left = (double)ext.x / PANGO_SCALE;
-  cairo_move_to(cr, x - left - width * (label->align == AW_ALIGN_CENTRE ? 0.5 : label->align == AW_ALIGN_RIGHT), y);
+  double width = (double)ext.width / PANGO_SCALE, height = (double)ext.height / PANGO_SCALE;
+  x -= width * (label->align == AW_ALIGN_CENTRE ? 0.5 : label->align == AW_ALIGN_RIGHT);
+  if (patch) {
+    aw_style_set_ink(cr, patch->ink);
+    aw_style_round_rect(cr, x - patch->pad, y, width + 2 * patch->pad, height, patch->corner);
+    cairo_fill(cr);
+  }
+  cairo_move_to(cr, x - (double)ext.x / PANGO_SCALE, y);
   aw_style_set_ink(cr, label->ink);
   pango_cairo_show_layout(cr, layout);
   cairo_new_path(cr);
   g_object_unref(layout);
-  return (double)ext.height / PANGO_SCALE;
+  return height;
+}
+
+double aw_label_draw(cairo_t *cr, const AwLabel *label, const char *text, double x, double y)
+{
+  return aw_label_draw_on(cr, label, NULL, text, x, y);
 }
 
 void aw_label_measure(cairo_t *cr, const AwLabel *label, const char *text, double *width, double *height)

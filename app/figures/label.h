@@ -23,6 +23,16 @@ typedef struct {
  */
 double aw_label_draw(cairo_t *cr, const AwLabel *label, const char *text, double x, double y);
 
+/* A patch of ink with round corners behind a text, `pad` to its sides. */
+typedef struct {
+  AwInk ink;
+  double pad, corner;
+} AwPatchInk;
+
+/* As aw_label_draw, over a patch that keeps the text readable on a picture. */
+double aw_label_draw_on(cairo_t *cr, const AwLabel *label, const AwPatchInk *patch, const char *text, double x,
+                        double y);
+
 /* The size that aw_label_draw would use. Either result may be NULL. */
 void aw_label_measure(cairo_t *cr, const AwLabel *label, const char *text, double *width, double *height);
 

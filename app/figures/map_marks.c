@@ -217,10 +217,8 @@ static void draw_pill(const AwMapPage *page, AwPixelPoint at, double dy, const c
   aw_label_measure(page->cr, &label, text, &w, &h);
   double x = CLAMP(at.x_px + 9 * u, page->x + 2 * u, MAX(page->x + page->width - w - 12 * u, page->x + 2 * u));
   double y = CLAMP(at.y_px + dy - (dy < 0 ? h : 0), page->y + 2 * u, MAX(page->y + page->height - h - 2 * u, page->y));
-  cairo_set_source_rgba(page->cr, aw_ink_night.r, aw_ink_night.g, aw_ink_night.b, 0.85);
-  aw_style_round_rect(page->cr, x, y, w + 10 * u, h, 5 * u);
-  cairo_fill(page->cr);
-  aw_label_draw(page->cr, &label, text, x + 5 * u, y);
+  AwPatchInk patch = { { aw_ink_night.r, aw_ink_night.g, aw_ink_night.b, 0.85 }, 5 * u, 5 * u };
+  aw_label_draw_on(page->cr, &label, &patch, text, x + 5 * u, y);
 }
 
 static void mark_end(const AwMapPage *page, AwPixelPoint at, gboolean start)

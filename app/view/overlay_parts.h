@@ -1,0 +1,39 @@
+/* Aimwell - SPDX-License-Identifier: GPL-3.0-or-later */
+#ifndef AW_VIEW_OVERLAY_PARTS_H
+#define AW_VIEW_OVERLAY_PARTS_H
+
+#include "view/overlay.h"
+#include "view/raster.h"
+
+/* One redraw of an overlay; only the files overlay*.c include it. */
+typedef struct {
+  const AwScene *scene;
+  const AwViewport *view;
+  cairo_t *cr;
+  AwRaster *raster;     /* begun, for marks and hairlines; painted by aw_overlay_draw */
+  double u;             /* logical px */
+  double size;          /* typical diameter of a nucleus on the screen, device px */
+  AwMatrix px_per_um;   /* scan to screen: s = px_per_um (q - q0) + origin */
+  AwScreenPoint origin; /* where q0 stands */
+} AwPass;
+
+static inline AwScreenPoint aw_pass_point(const AwPass *pass, AwScanPoint q)
+{
+  double dx = q.x_um - pass->scene->upright->q0.x_um, dy = q.y_um - pass->scene->upright->q0.y_um;
+  const AwMatrix *m = &pass->px_per_um;
+  return (AwScreenPoint){ pass->origin.sx + m->xx * dx + m->xy * dy, pass->origin.sy + m->yx * dx + m->yy * dy };
+}
+
+/* Hairlines and marks of the nuclei `item` (guint) on the raster. */
+void aw_overlay_marks(const AwPass *pass, const GArray *item, gboolean outlines);
+
+/* The same in full detail through cairo. */
+void aw_overlay_full(const AwPass *pass, const GArray *item);
+
+/* The tour, under the nuclei: on the raster when it is long, else through cairo. */
+void aw_overlay_tour(const AwPass *pass);
+
+/* Above everything: direction of the tour, cautions, brackets round the current nucleus. */
+void aw_overlay_signs(const AwPass *pass, const GArray *item);
+
+#endif
