@@ -1,0 +1,307 @@
+/* Aimwell - SPDX-License-Identifier: GPL-3.0-or-later */
+#include <math.h>
+#include <string.h>
+
+#include "figures/map.h"
+#include "support/fake_dish.h"
+
+#define W 1000
+#define H 750
+#define SIDE 600 /* of the one frame of the pattern tests, px */
+
+typedef struct {
+  double r, g, b;
+} Pixel;
+
+static Pixel pixel(cairo_surface_t *page, double x, double y)
+{
+  const unsigned char *row =
+      cairo_image_surface_get_data(page) + (gsize)y * (gsize)cairo_image_surface_get_stride(page);
+  const unsigned char *p = row + 4 * (gsize)x;
+  return (Pixel){ p[2], p[1], p[0] };
+}
+
+static double grey(cairo_surface_t *page, double x, double y)
+{
+  Pixel p = pixel(page, floor(x + 0.5), floor(y + 0.5));
+  return (p.r + p.g + p.b) / 3;
+}
+
+static cairo_surface_t *draw(const AwMapContent *content)
+{
+  cairo_surface_t *page = cairo_image_surface_create(CAIRO_FORMAT_RGB24, W, H);
+  cairo_t *cr = cairo_create(page);
+  aw_map_draw(content, cr, W, H);
+  g_assert_cmpint(cairo_status(cr), ==, CAIRO_STATUS_SUCCESS);
+  cairo_destroy(cr);
+  cairo_surface_flush(page);
+  return page;
+}
+
+static AwMapContent content_of(const FakeDish *dish)
+{
+  return (AwMapContent){ .title = "test",
+                         .subtitle = "a made-up dish",
+                         .frames = dish->frames,
+                         .map = dish->map,
+                         .nuclei = dish->nuclei,
+                         .state = dish->state,
+                         .tour = (const gint64 *)(const void *)dish->tour->data,
+                         .n_tour = dish->tour->len };
+}
+
+/* The middle of all pixels in the dish's half of the page that are near the ink of `state`. */
+static AwPixelPoint middle_of_ink(cairo_surface_t *page, AwState state)
+{
+  static const Pixel inks[] = { [AW_STATE_PROPOSED] = { 255, 209, 74 },
+                                [AW_STATE_ACCEPTED] = { 56, 189, 247 },
+                                [AW_STATE_REJECTED] = { 247, 102, 64 } };
+  double n = 0, sx = 0, sy = 0;
+  for (int y = 0; y < H; y++)
+    for (int x = 0; x < W * 0.66; x++) {
+      Pixel p = pixel(page, x, y), ink = inks[state];
+      if (fabs(p.r - ink.r) + fabs(p.g - ink.g) + fabs(p.b - ink.b) < 60) {
+        n++;
+        sx += x;
+        sy += y;
+      }
+    }
+  g_assert_cmpfloat(n, >, 10);
+  return (AwPixelPoint){ sx / n, sy / n };
+}
+
+/* An ellipse by its place and axes in the image: full axes 60 and 26 px, the long one 30 degrees below +x. */
+static void add_at_pixel(FakeDish *dish, double x_px, double y_px)
+{
+  const AwFrame *frame = dish->frames->pdata[0];
+  AwPixelPoint c = aw_frame_centre(SIDE, SIDE);
+  double scale = aw_pixel_map_scale(&dish->map);
+  AwScanPoint q = aw_pixel_to_scan(&dish->map, frame->stage, c, (AwPixelPoint){ x_px, y_px });
+  AwScanPoint tip =
+      aw_pixel_to_scan(&dish->map, frame->stage, c, (AwPixelPoint){ x_px + cos(G_PI / 6), y_px + sin(G_PI / 6) });
+  fake_dish_add(dish, q, 60 * scale, 26 * scale, atan2(tip.y_um - q.y_um, tip.x_um - q.x_um));
+}
+
+/* An L as the microscope shows it: a stroke down on the left, then one to the right at its foot. */
+static FakeDish *pattern(double camera_rad, gboolean mirrored)
+{
+  FakeDishSettings s = fake_dish_defaults();
+  s.n_across = s.n_down = 1;
+  s.side_px = SIDE;
+  s.n_nuclei = 0;
+  s.overview_px = 0;
+  s.camera_rad = camera_rad;
+  s.mirrored = mirrored;
+  FakeDish *dish = fake_dish_new(&s);
+  static const AwState states[] = { AW_STATE_ACCEPTED, AW_STATE_PROPOSED, AW_STATE_REJECTED };
+  add_at_pixel(dish, 150, 120);
+  add_at_pixel(dish, 150, 480);
+  add_at_pixel(dish, 450, 480);
+  g_free(dish->state);
+  dish->state = g_memdup2(states, sizeof states);
+  return dish;
+}
+
+static AwPixelPoint step(AwPixelPoint at, double along, double across)
+{
+  double c = cos(G_PI / 6), s = sin(G_PI / 6);
+  return (AwPixelPoint){ at.x_px + along * c - across * s, at.y_px + along * s + across * c };
+}
+
+/* The drawn outline must lie on the edge of the bright blob: bright inside it, dark outside, along both axes. */
+static void check_blob(cairo_surface_t *page, AwPixelPoint at, double page_per_px)
+{
+  for (int sign = -1; sign <= 1; sign += 2) {
+    AwPixelPoint in = step(at, sign * 24 * page_per_px, 0), out = step(at, 0, sign * 20 * page_per_px);
+    AwPixelPoint far = step(at, sign * 40 * page_per_px, 0);
+    g_assert_cmpfloat(grey(page, in.x_px, in.y_px), >, 90);
+    g_assert_cmpfloat(grey(page, out.x_px, out.y_px), <, 60);
+    g_assert_cmpfloat(grey(page, far.x_px, far.y_px), <, 60);
+  }
+}
+
+static void check_pattern(double camera_rad, gboolean mirrored)
+{
+  g_autoptr(FakeDish) dish = pattern(camera_rad, mirrored);
+  fake_dish_paint(dish, 300);
+  AwMapContent content = content_of(dish);
+  content.n_tour = 0;
+  cairo_surface_t *page = draw(&content);
+  AwPixelPoint top = middle_of_ink(page, AW_STATE_ACCEPTED), corner = middle_of_ink(page, AW_STATE_PROPOSED);
+  AwPixelPoint right = middle_of_ink(page, AW_STATE_REJECTED);
+  double k = (corner.y_px - top.y_px) / 360;
+  g_assert_cmpfloat(k, >, 0.5); /* the stroke runs down, ... */
+  g_assert_cmpfloat_with_epsilon(top.x_px, corner.x_px, 1.5);
+  g_assert_cmpfloat_with_epsilon((right.x_px - corner.x_px) / 300, k, 0.01); /* ... the foot to the right */
+  g_assert_cmpfloat_with_epsilon(right.y_px, corner.y_px, 1.5);
+  check_blob(page, top, k);
+  check_blob(page, corner, k);
+  check_blob(page, right, k);
+  cairo_surface_destroy(page);
+}
+
+static void handedness(void)
+{
+  check_pattern(0, FALSE);
+  check_pattern(0.3, FALSE);
+  check_pattern(-2.5, FALSE);
+  check_pattern(0, TRUE);
+  check_pattern(1.2, TRUE);
+}
+
+static void reverse(GPtrArray *list)
+{
+  for (guint i = 0; i < list->len / 2; i++) {
+    gpointer swap = list->pdata[i];
+    list->pdata[i] = list->pdata[list->len - 1 - i];
+    list->pdata[list->len - 1 - i] = swap;
+  }
+}
+
+/* Frames that overlap must show the same nuclei at the same places, whichever of them lies on top. */
+static void overlaps_agree(void)
+{
+  FakeDishSettings s = fake_dish_defaults();
+  s.overlap_frac = 0.4;
+  s.camera_rad = 0.12;
+  g_autoptr(FakeDish) dish = fake_dish_new(&s);
+  AwMapContent content = content_of(dish);
+  content.nuclei = NULL;
+  content.n_tour = 0;
+  cairo_surface_t *first = draw(&content);
+  reverse(dish->frames);
+  cairo_surface_t *second = draw(&content);
+  double n = 0, sum = 0;
+  for (int y = 120; y < 600; y++)
+    for (int x = 120; x < 600; x++) {
+      sum += fabs(grey(first, x, y) - grey(second, x, y));
+      n++;
+    }
+  g_test_message("mean difference %g", sum / n);
+  g_assert_cmpfloat(sum / n, <, 3); /* 2.4 from noise and frame numbers; 4.2 with frames 1 % apart, 6.6 when mirrored */
+  cairo_surface_destroy(first);
+  cairo_surface_destroy(second);
+}
+
+static gsize not_white(cairo_surface_t *page)
+{
+  gsize n = 0;
+  for (int y = 0; y < H; y++)
+    for (int x = 0; x < W; x++)
+      n += grey(page, x, y) < 250;
+  return n;
+}
+
+/* The pictures of poor content must still be drawn: no tour, nuclei, pictures, states, frames, titles. */
+static void empty_states(void)
+{
+  g_autoptr(FakeDish) dish = pattern(0.1, FALSE);
+  AwMapContent content = content_of(dish);
+  for (int i = 0; i < 6; i++) {
+    if (i == 1)
+      content.n_tour = 0, content.tour = NULL;
+    if (i == 2)
+      content.state = NULL;
+    if (i == 3)
+      content.nuclei = NULL;
+    if (i == 4)
+      content.title = content.subtitle = NULL;
+    if (i == 5)
+      content.frames = NULL;
+    cairo_surface_t *page = draw(&content);
+    g_assert_cmpuint(not_white(page), >, 50000);
+    cairo_surface_destroy(page);
+  }
+}
+
+static void mad_numbers(void)
+{
+  g_autoptr(FakeDish) dish = pattern(0, FALSE);
+  static const double mad[] = { NAN, INFINITY, -INFINITY, 1e300, -1e9, 0 };
+  for (gsize i = 0; i < G_N_ELEMENTS(mad); i++) {
+    AwNucleus *n = fake_dish_add(dish, (AwScanPoint){ mad[i], 0 }, 10, 10, 0);
+    n->diameter = mad[i];
+    n = fake_dish_add(dish, (AwScanPoint){ 0, 0 }, 10, 10, 0);
+    n->outline[3].y_um = mad[i];
+    g_array_append_val(dish->tour, n->id);
+    AwFrame *frame = g_new0(AwFrame, 1);
+    frame->stage = (AwScanPoint){ 0, mad[i] };
+    frame->width_px = i % 2 ? 100 : -1;
+    frame->height_px = 100;
+    frame->overview = g_bytes_new_static("not a picture, though it is long enough", 39);
+    g_ptr_array_add(dish->frames, frame);
+  }
+  g_free(dish->state);
+  dish->state = g_new(AwState, dish->nuclei->len);
+  memset(dish->state, 0x7f, dish->nuclei->len * sizeof(AwState));
+  AwMapContent content = content_of(dish);
+  content.title = "bad \xff\xfe bytes <b>& \n\n lines";
+  cairo_surface_t *page = draw(&content);
+  g_assert_cmpuint(not_white(page), >, 2000);
+  cairo_surface_destroy(page);
+}
+
+/* A pixel map that cannot be inverted places nothing and says so on a light ground. */
+static void useless_map(void)
+{
+  g_autoptr(FakeDish) dish = pattern(0, FALSE);
+  static const AwMatrix maps[] = { { 0, 0, 0, 0 }, { 1, 2, 2, 4 }, { NAN, 0, 0, 1 }, { INFINITY, 0, 0, 1 } };
+  for (gsize i = 0; i < G_N_ELEMENTS(maps); i++) {
+    AwMapContent content = content_of(dish);
+    content.map.um_per_px = maps[i];
+    cairo_surface_t *page = draw(&content);
+    g_assert_cmpfloat_with_epsilon(grey(page, 300, 200), 243, 3);
+    cairo_surface_destroy(page);
+  }
+}
+
+/* The tour's start, a white disc, stands on its first stop: the middle of a known nucleus. */
+static void tour_starts_at_first(void)
+{
+  g_autoptr(FakeDish) dish = pattern(0, FALSE);
+  gint64 ids[] = { 3, 99, 1 }; /* 99 does not exist and is passed over */
+  g_array_append_vals(dish->tour, ids, 3);
+  AwMapContent content = content_of(dish);
+  cairo_surface_t *page = draw(&content);
+  AwPixelPoint corner = middle_of_ink(page, AW_STATE_PROPOSED);
+  content.n_tour = 0;
+  cairo_surface_t *bare = draw(&content);
+  AwPixelPoint first = middle_of_ink(bare, AW_STATE_REJECTED), last = middle_of_ink(bare, AW_STATE_ACCEPTED);
+  g_assert_cmpfloat(grey(page, first.x_px, first.y_px), >, 250);
+  g_assert_cmpfloat(grey(page, last.x_px, last.y_px), >, 250);
+  g_assert_cmpfloat(grey(page, corner.x_px + 20, corner.y_px), <, 200);
+  g_assert_cmpfloat(grey(page, (first.x_px + last.x_px) / 2, (first.y_px + last.y_px) / 2), >, 180);
+  cairo_surface_destroy(page);
+  cairo_surface_destroy(bare);
+}
+
+/* 20,000 nuclei and a tour through a third of them, at the size of a poster. */
+static void many_nuclei(void)
+{
+  FakeDishSettings s = fake_dish_defaults();
+  s.n_across = s.n_down = 10;
+  s.overview_px = 0;
+  s.n_nuclei = 20000;
+  g_autoptr(FakeDish) dish = fake_dish_new(&s);
+  AwMapContent content = content_of(dish);
+  cairo_surface_t *page = cairo_image_surface_create(CAIRO_FORMAT_RGB24, 2400, 1800);
+  cairo_t *cr = cairo_create(page);
+  g_test_timer_start();
+  aw_map_draw(&content, cr, 2400, 1800);
+  g_assert_cmpfloat(g_test_timer_elapsed(), <, 20); /* a second on a quiet machine */
+  cairo_destroy(cr);
+  cairo_surface_destroy(page);
+}
+
+int main(int argc, char **argv)
+{
+  g_test_init(&argc, &argv, NULL);
+  g_test_add_func("/figures/map/handedness", handedness);
+  g_test_add_func("/figures/map/overlaps_agree", overlaps_agree);
+  g_test_add_func("/figures/map/empty_states", empty_states);
+  g_test_add_func("/figures/map/mad_numbers", mad_numbers);
+  g_test_add_func("/figures/map/useless_map", useless_map);
+  g_test_add_func("/figures/map/tour_starts_at_first", tour_starts_at_first);
+  g_test_add_func("/figures/map/many_nuclei", many_nuclei);
+  return g_test_run();
+}
