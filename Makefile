@@ -15,6 +15,8 @@ WARN := -Wall -Wextra -Wpedantic -Wshadow -Wstrict-prototypes -Wmissing-prototyp
 OPT_release := -O2 -g
 OPT_asan    := -O1 -g -fno-omit-frame-pointer -fsanitize=address,undefined -fno-sanitize-recover=undefined
 OPT_tsan    := -O1 -g -fno-omit-frame-pointer -fsanitize=thread
+OPT_fuzz    := -O1 -g -fno-omit-frame-pointer -fsanitize=fuzzer-no-link,address,undefined -fno-sanitize-recover=undefined \
+               -DAW_FUZZER
 OPT_cov     := -O0 -g --coverage
 
 CFLAGS_ALL = -std=c11 -D_GNU_SOURCE -ffp-contract=off -pthread $(WARN) $(OPT_$(MODE)) -DAW_VERSION='"$(VERSION)"' \
@@ -29,7 +31,8 @@ view_src   := $(sort $(wildcard app/view/*.c))
 cli_src    := $(sort $(wildcard app/cli/*.c))
 viewer_src := $(sort $(wildcard app/viewer/*.c))
 unit_src   := $(sort $(wildcard tests/unit/test_*.c))
-support_src:= $(sort $(wildcard tests/support/*.c))
+fuzz_src   := $(sort $(wildcard tests/fuzz/fuzz_*.c))
+support_src:= $(sort $(wildcard tests/support/*.c)) $(fuzz_src)
 bench_src  := $(sort $(wildcard tests/bench/bench_*.c))
 objs = $(patsubst %.c,$(OBJ)/%.o,$(1))
 
@@ -142,6 +145,25 @@ lint: ## layers, sizes, header self-containment, clang-format, clang-tidy
 
 bench: $(BIN)/aimwell $(bench_bin) ## speed as ratios in one run
 	@for b in $(bench_bin); do echo "== $$(basename $$b)"; AIMWELL=$(abspath $(BIN)/aimwell) $$b || exit 1; done
+
+# ---- fuzzing: tests/fuzz/fuzz.h ----
+
+fuzz_bin := $(patsubst tests/fuzz/fuzz_%.c,$(BUILD)/fuzz/%,$(fuzz_src))
+
+$(BUILD)/fuzz/%: $(OBJ)/tests/fuzz/fuzz_%.o $(core_lib)
+	@mkdir -p $(@D); echo "LD $@"
+	$(Q)$(CC) $(LDFLAGS_ALL) -fsanitize=fuzzer -o $@ $< $(core_lib) $(core_libs)
+
+.PHONY: fuzz-build fuzz
+fuzz-build: ## the fuzz harnesses, as build/fuzz/NAME; needs clang
+	@$(MAKE) --no-print-directory MODE=fuzz CC=clang $(fuzz_bin)
+
+FUZZ_S ?= 60
+fuzz: fuzz-build ## each harness for FUZZ_S seconds from its corpus; new inputs go to build/fuzz/NAME.found
+	@for f in $(fuzz_bin); do mkdir -p $$f.found; \
+	  $$f -max_total_time=$(FUZZ_S) -rss_limit_mb=1024 -timeout=10 -print_final_stats=1 -artifact_prefix=$$f.found/ \
+	    $$f.found tests/fuzz/corpus/$$(basename $$f) 2>$$f.log || { tail -40 $$f.log; exit 1; }; \
+	  echo "ok - $$(basename $$f): $$(grep -o 'stat::number_of_executed_units: *[0-9]*' $$f.log)"; done
 
 # ---- what a newcomer types ----
 
