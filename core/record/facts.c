@@ -43,8 +43,8 @@ gboolean aw_record_fact_double(AwRecord *record, const char *key, double fallbac
 
 gboolean aw_record_set_fact_double(AwRecord *record, const char *key, double value, GError **error)
 {
-  g_return_val_if_fail(isfinite(value), FALSE);
-  g_autofree char *text = aw_text_from_double_exact(value);
+  g_return_val_if_fail(!isinf(value), FALSE);
+  g_autofree char *text = isnan(value) ? NULL : aw_text_from_double_exact(value);
   return aw_record_set_fact(record, key, text, error);
 }
 

@@ -65,7 +65,7 @@ GPtrArray *aw_record_journal(AwRecord *record, GError **error);
 char *aw_record_fact(AwRecord *record, const char *key, GError **error);
 gboolean aw_record_set_fact(AwRecord *record, const char *key, const char *value, GError **error); /* NULL removes */
 gboolean aw_record_fact_double(AwRecord *record, const char *key, double fallback, double *value, GError **error);
-gboolean aw_record_set_fact_double(AwRecord *record, const char *key, double value, GError **error);
+gboolean aw_record_set_fact_double(AwRecord *record, const char *key, double value, GError **error); /* NaN removes */
 
 /* One frame of the scan as the record keeps it. */
 typedef struct {

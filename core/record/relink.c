@@ -83,7 +83,7 @@ static gboolean rename_file(AwRecord *record, const char *old, const char *new, 
 static const AwFrame *frame_of(GPtrArray *frames, const char *file)
 {
   guint i = 0;
-  while (strcmp(((AwFrame *)g_ptr_array_index(frames, i))->file, file))
+  while (!g_str_equal(((AwFrame *)g_ptr_array_index(frames, i))->file, file))
     i++;
   return g_ptr_array_index(frames, i);
 }

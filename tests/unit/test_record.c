@@ -224,6 +224,10 @@ static void test_facts(Place *place, gconstpointer ignored)
   g_assert_true(aw_record_set_fact_double(record, "third", 1.0 / 3.0, &error));
   g_assert_true(aw_record_fact_double(record, "third", 0, &value, &error));
   g_assert_cmpfloat(value, ==, 1.0 / 3.0);
+  g_assert_true(aw_record_set_fact_double(record, "third", NAN, &error));
+  g_assert_true(aw_record_fact_double(record, "third", 2, &value, &error));
+  g_assert_cmpfloat(value, ==, 2);
+  g_assert_true(aw_record_set_fact(record, "third", "3", &error));
   g_assert_true(aw_record_set_fact(record, "third", NULL, &error));
   g_assert_null(aw_record_fact(record, "third", &error));
   g_assert_no_error(error);

@@ -172,7 +172,7 @@ static void expect_dump(Dish *dish, const char *expected)
 static void test_every_action(Dish *dish, gconstpointer ignored)
 {
   (void)ignored;
-  g_autofree char *states[N_ACTIONS + 1] = { NULL };
+  char *states[N_ACTIONS + 1];
   states[0] = aw_test_dish_dump(dish->record);
   for (gsize i = 0; i < N_ACTIONS; i++) {
     act(dish, i);
@@ -193,8 +193,8 @@ static void test_every_action(Dish *dish, gconstpointer ignored)
   }
   GError *error = NULL;
   g_assert_true(aw_record_check(dish->record, &error));
-  for (gsize i = 0; i < N_ACTIONS; i++)
-    g_free(g_steal_pointer(&states[i]));
+  for (gsize i = 0; i <= N_ACTIONS; i++)
+    g_free(states[i]);
 }
 
 /* Every change above is seen by the dump: else the test before proves nothing. */

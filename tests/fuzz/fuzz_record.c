@@ -1,0 +1,59 @@
+/* Aimwell - SPDX-License-Identifier: GPL-3.0-or-later */
+/* Fuzzing of the dish record: bytes that claim to be one are opened, checked, read whole, and undone and redone. */
+#include <stddef.h>
+#include <stdint.h>
+#include <stdio.h>
+#include <unistd.h>
+
+#include "record/files.h"
+
+int LLVMFuzzerTestOneInput(const uint8_t *bytes, size_t n_bytes);
+
+static void read_all(AwRecord *record)
+{
+  AwPixelMap map;
+  gint64 id;
+  aw_record_check(record, NULL);
+  aw_record_pixel_map(record, &map, NULL);
+  aw_record_next_nucleus_id(record, &id, NULL);
+  g_autoptr(GPtrArray) journal = aw_record_journal(record, NULL);
+  g_autoptr(GPtrArray) frames = aw_record_frames(record, NULL);
+  g_autoptr(GPtrArray) bare = aw_record_nuclei(record, FALSE, NULL);
+  g_autoptr(GPtrArray) whole = aw_record_nuclei(record, TRUE, NULL);
+  g_autoptr(GArray) decisions = aw_record_decisions(record, NULL);
+  g_autoptr(GArray) gates = aw_record_gates(record, NULL);
+  g_autoptr(GArray) tour = aw_record_tour(record, NULL);
+}
+
+static void change(AwRecord *record)
+{
+  if (aw_record_undo(record, "fuzz", NULL, NULL))
+    aw_record_redo(record, "fuzz", NULL, NULL);
+  if (aw_record_begin(record, "fuzz", NULL)) {
+    g_autoptr(GPtrArray) none = aw_nuclei_new();
+    aw_record_set_nuclei(record, none, NULL);
+    aw_record_commit(record, "no nuclei", NULL);
+  }
+}
+
+int LLVMFuzzerTestOneInput(const uint8_t *bytes, size_t n_bytes)
+{
+  static char path[64]; /* one file a process, in memory where the machine has such a place */
+  if (!path[0])
+    snprintf(path, sizeof path, "%s/aimwell-fuzz-%ld.dish", access("/dev/shm", W_OK) == 0 ? "/dev/shm" : "/tmp",
+             (long)getpid());
+  FILE *file = fopen(path, "wb");
+  if (!file)
+    return 0;
+  size_t n_written = fwrite(bytes, 1, n_bytes, file);
+  if (fclose(file) == 0 && n_written == n_bytes) {
+    AwRecord *record = aw_record_open(path, AW_RECORD_WRITE, NULL);
+    if (record) {
+      read_all(record);
+      change(record);
+    }
+    aw_record_free(record);
+  }
+  unlink(path);
+  return 0;
+}
