@@ -106,7 +106,8 @@ static gboolean measure_unsorted(const AwStop *stops, AwTour *tour, const AwTour
   return FALSE;
 }
 
-static gboolean search(const AwTourProblem *p, AwTour *tour, AwTourArray *array, AwProgress *progress, GError **error)
+static gboolean search(const AwTourProblem *p, AwTour *tour, AwTourArray *array, const AwTourSettings *set,
+                       gint64 begun_us, AwProgress *progress, GError **error)
 {
   gboolean backwards;
   aw_progress_report(progress, "tour", 0.1);
@@ -115,11 +116,19 @@ static gboolean search(const AwTourProblem *p, AwTour *tour, AwTourArray *array,
   tour->two_opt = aw_tour_problem_total(p, array->order, &backwards);
   if (!aw_tour_or_opt(p, array, progress, error))
     return FALSE;
+  if (p->n > AW_TOUR_MAX_EXACT) {
+    AwTourChainLimits limits = { .seed = set->seed, .n_steps = set->n_steps < 0 ? 20 * (gint64)tour->n : set->n_steps };
+    limits.until_us = set->budget_s > 0 ? begun_us + (gint64)(1e6 * set->budget_s) : 0;
+    if (!aw_tour_chain(p, array, &limits, progress, error))
+      return FALSE;
+    tour->n_steps_used = limits.n_used;
+  }
   aw_tour_problem_read(p, array->order, tour->order);
   return TRUE;
 }
 
-static gboolean find(const AwStop *stops, AwTour *tour, const AwTourSettings *set, AwProgress *progress, GError **error)
+static gboolean find(const AwStop *stops, AwTour *tour, const AwTourSettings *set, gint64 begun_us,
+                     AwProgress *progress, GError **error)
 {
   gboolean backwards;
   g_autoptr(AwTourProblem) p = aw_tour_problem_new(stops, (guint32)tour->n, set, error);
@@ -131,18 +140,19 @@ static gboolean find(const AwStop *stops, AwTour *tour, const AwTourSettings *se
   tour->nearest = aw_tour_problem_total(p, start, &backwards);
   p->least_gain = tour->nearest * (1e-9 / p->n + 1e-14);
   g_autoptr(AwTourArray) array = aw_tour_array_new(start, p->n, error);
-  return array && search(p, tour, array, progress, error);
+  return array && search(p, tour, array, set, begun_us, progress, error);
 }
 
 AwTour *aw_tour_find(const AwStop *stops, gsize n, const AwTourSettings *set, AwProgress *progress, GError **error)
 {
   g_return_val_if_fail((stops || n == 0) && set, NULL);
+  gint64 begun_us = g_get_monotonic_time();
   if (!check(stops, n, set, error))
     return NULL;
   g_autoptr(AwTour) tour = g_new0(AwTour, 1);
   tour->n = n;
   tour->order = aw_try_alloc(n, sizeof *tour->order, "a tour", error);
-  if (!tour->order || !measure_unsorted(stops, tour, set, error) || !find(stops, tour, set, progress, error))
+  if (!tour->order || !measure_unsorted(stops, tour, set, error) || !find(stops, tour, set, begun_us, progress, error))
     return NULL;
   if (n <= AW_TOUR_MAX_EXACT)
     aw_tour_exact(stops, (guint)n, set, tour->order);

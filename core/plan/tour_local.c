@@ -1,39 +1,18 @@
 /* Aimwell - SPDX-License-Identifier: GPL-3.0-or-later */
+#include "plan/tour_queue.h"
 #include "plan/tour_search.h"
-
-#include "base/limits.h"
 
 /* 2-opt with neighbour lists and don't-look bits (Bentley 1992; Johnson & McGeoch 1997) and Or-opt (Or 1976): runs of
  * one to three nodes are moved to a better place, either way round. A node is looked at again only when one of its
- * edges changed; the nodes to look at wait in a ring. */
+ * edges changed. */
 
 #define MAX_RUN 3
 
 typedef struct {
   const AwTourProblem *p;
   AwTourArray *tour;
-  guint32 *ring; /* n nodes waiting, from `first` on */
-  guint32 first, n_waiting;
-  guint8 *waits;
+  AwTourQueue queue;
 } Local;
-
-static void wait_for(Local *s, guint32 v)
-{
-  if (s->waits[v])
-    return;
-  s->waits[v] = 1;
-  guint64 at = (guint64)s->first + s->n_waiting++;
-  s->ring[at >= s->p->n ? at - s->p->n : at] = v;
-}
-
-static guint32 take_next(Local *s)
-{
-  guint32 v = s->ring[s->first];
-  s->first = s->first + 1 == s->p->n ? 0 : s->first + 1;
-  s->n_waiting--;
-  s->waits[v] = 0;
-  return v;
-}
 
 static inline guint32 neighbour(const Local *s, guint32 v, gboolean forward)
 {
@@ -46,7 +25,7 @@ static gboolean exchange(Local *s, AwTourExchange *x)
   if (!aw_tour_array_exchange(s->tour, x))
     return FALSE;
   for (guint i = 0; i < 2 * x->k; i++)
-    wait_for(s, x->t[i]);
+    aw_tour_queue_push(&s->queue, x->t[i]);
   return TRUE;
 }
 
@@ -108,26 +87,29 @@ static gboolean move_run(Local *s, guint32 a)
   return FALSE;
 }
 
-static gboolean run_local(const AwTourProblem *p, AwTourArray *tour, gboolean runs, AwProgress *progress,
-                          GError **error)
+static gboolean run_queue(Local *s, gboolean runs, AwProgress *progress, GError **error)
 {
-  if (p->n < 5)
-    return TRUE;
-  Local s = { .p = p, .tour = tour };
-  g_autofree guint32 *ring = s.ring = aw_try_alloc(p->n, sizeof *ring, "a tour", error);
-  g_autofree guint8 *waits = s.waits = aw_try_alloc(p->n, 1, "a tour", error);
-  if (!ring || !waits)
-    return FALSE;
-  for (guint32 i = 0; i < p->n; i++)
-    wait_for(&s, tour->order[i]);
-  for (guint64 n = 1; s.n_waiting; n++) {
+  for (guint32 i = 0; i < s->p->n; i++)
+    aw_tour_queue_push(&s->queue, s->tour->order[i]);
+  for (guint64 n = 1; s->queue.n; n++) {
     if (n % 16384 == 0 && aw_progress_stopped(progress, error))
       return FALSE;
-    guint32 v = take_next(&s);
-    while (turn_stretch(&s, v) || (runs && move_run(&s, v)))
+    guint32 v = aw_tour_queue_pop(&s->queue);
+    while (turn_stretch(s, v) || (runs && move_run(s, v)))
       ;
   }
   return TRUE;
+}
+
+static gboolean run_local(const AwTourProblem *p, AwTourArray *tour, gboolean runs, AwProgress *progress,
+                          GError **error)
+{
+  Local s = { .p = p, .tour = tour };
+  if (p->n < 5)
+    return TRUE;
+  gboolean done = aw_tour_queue_init(&s.queue, p->n, error) && run_queue(&s, runs, progress, error);
+  aw_tour_queue_clear(&s.queue);
+  return done;
 }
 
 gboolean aw_tour_two_opt(const AwTourProblem *p, AwTourArray *tour, AwProgress *progress, GError **error)

@@ -19,6 +19,18 @@ gboolean aw_tour_two_opt(const AwTourProblem *problem, AwTourArray *tour, AwProg
 /* Or-opt: moves runs of one to three nodes elsewhere, together with 2-opt, while that saves cost. */
 gboolean aw_tour_or_opt(const AwTourProblem *problem, AwTourArray *tour, AwProgress *progress, GError **error);
 
+/* When the chained search ends. */
+typedef struct {
+  guint64 seed;
+  gint64 n_steps;  /* at most so many steps */
+  gint64 until_us; /* > 0: until this monotonic time instead */
+  gint64 n_used;   /* out: steps made */
+} AwTourChainLimits;
+
+/* The deep search, then steps of the chained search (tour_chain.c). */
+gboolean aw_tour_chain(const AwTourProblem *problem, AwTourArray *tour, AwTourChainLimits *limits, AwProgress *progress,
+                       GError **error);
+
 #define AW_TOUR_MAX_EXACT 10
 
 /**
