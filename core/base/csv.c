@@ -9,7 +9,8 @@
 #include "base/text.h"
 
 #define MAX_COLUMNS 10000
-#define NAME_BYTES 24
+#define MAX_NAMED 24 /* columns that an error lists */
+#define BYTE_ORDER_MARK "\xef\xbb\xbf"
 
 /* The file stays in one buffer: fields are unquoted and ended with NUL where they stand, and found by offset. */
 struct AwCsv {
@@ -86,12 +87,12 @@ static char *line_end(const Reader *r)
   return p;
 }
 
-/* Skips lines that are empty or hold nothing but blanks. */
+/* Skips lines that are empty or hold nothing but blanks (which are fields where the blank is the separator). */
 static void skip_blank_lines(Reader *r)
 {
   for (;;) {
     char *p = r->at;
-    while (p < r->end && *p == ' ')
+    while (p < r->end && *p == ' ' && r->csv->separator != ' ')
       p++;
     if (p < r->end && *p != '\n' && *p != '\r')
       return;
@@ -268,7 +269,7 @@ static AwCsv *parse_owned(char *text, gsize n_bytes, const char *name, char sepa
   csv->comments = g_ptr_array_new_with_free_func(g_free);
   if (!check_bytes(csv, error) || (headings && !append_headings(csv, headings, error)))
     return NULL;
-  gsize bom = g_str_has_prefix(csv->text, "\xef\xbb\xbf") ? 3 : 0;
+  gsize bom = g_str_has_prefix(csv->text, BYTE_ORDER_MARK) ? 3 : 0;
   Reader r = { csv, csv->text + bom, csv->text + n_bytes, 1 };
   read_comments(&r);
   g_ptr_array_add(csv->comments, NULL);
@@ -360,7 +361,7 @@ gboolean aw_csv_need(const AwCsv *csv, const char *heading, gsize *column, GErro
     return TRUE;
   }
   g_autoptr(GString) have = g_string_new(NULL);
-  for (gsize i = 0; i < MIN(csv->n_columns, NAME_BYTES); i++)
+  for (gsize i = 0; i < MIN(csv->n_columns, MAX_NAMED); i++)
     g_string_append_printf(have, "%s%s", i ? ", " : "", aw_csv_heading(csv, i));
   gboolean other = csv->n_columns == 1 && strpbrk(have->str, ";\t,");
   g_set_error(error, AW_ERROR, AW_ERROR_NOT_FOUND, "%s has no column '%s'; its columns are: %s%s%s%s", csv->name,
@@ -396,12 +397,18 @@ gboolean aw_csv_int(const AwCsv *csv, gsize row, gsize column, gint64 min, gint6
   return aw_text_to_int(text, where, min, max, value, error);
 }
 
+/* Besides what RFC 4180 asks for: what would be taken for a comment or a byte order mark, or trimmed, is quoted. */
+static gboolean needs_quotes(const char *text, char separator)
+{
+  const char special[] = { separator, '"', '\r', '\n', '\0' };
+  return strpbrk(text, special) || *text == '#' || *text == ' ' || g_str_has_suffix(text, " ") ||
+         g_str_has_prefix(text, BYTE_ORDER_MARK);
+}
+
 void aw_csv_append(GString *out, const char *text, char separator)
 {
-  char special[] = { separator, '"', '\r', '\n', '\0' };
-  gsize n = strlen(text);
-  if (!strpbrk(text, special) && *text != '#' && *text != ' ' && (n == 0 || text[n - 1] != ' ')) {
-    g_string_append_len(out, text, (gssize)n);
+  if (!needs_quotes(text, separator)) {
+    g_string_append(out, text);
     return;
   }
   g_string_append_c(out, '"');

@@ -196,17 +196,25 @@ static gboolean read_column(const Source *from, const char *group, AwLayout *lay
   column->sign = 1;
   column->first = 1;
   column->heading = aw_keyfile_text(from->keys, group, "heading", group + strlen(COLUMN_PREFIX));
-  g_strstrip(column->heading);
-  if (!check_line(from, group, "heading", column->heading, error))
-    return FALSE;
-  for (gsize i = 0; i + 1 < layout->columns->len; i++)
-    if (!*column->heading || !strcmp(column->heading, aw_layout_column(layout, i)->heading)) {
-      g_set_error(error, AW_ERROR, AW_ERROR_FORMAT, "%s, group [%s]: heading '%s' stands twice or is empty", from->name,
-                  group, column->heading);
-      return FALSE;
-    }
-  g_ptr_array_add(layout->headings, column->heading);
-  return read_column_value(from, group, column, error);
+  g_ptr_array_add(layout->headings, g_strstrip(column->heading));
+  return check_line(from, group, "heading", column->heading, error) && read_column_value(from, group, column, error);
+}
+
+/* A value may stand in one column only, so that what is read back is compared column by column. */
+static gboolean check_once(const Source *from, const AwLayout *layout, gsize i, GError **error)
+{
+  const AwColumn *column = aw_layout_column(layout, i);
+  gboolean heading_twice = !*column->heading, value_twice = FALSE;
+  for (gsize k = 0; k < i; k++) {
+    const AwColumn *other = aw_layout_column(layout, k);
+    heading_twice = heading_twice || !strcmp(column->heading, other->heading);
+    value_twice = value_twice || (column->value == other->value && column->value != AW_COLUMN_TEXT);
+  }
+  if (!heading_twice && !value_twice)
+    return TRUE;
+  g_set_error(error, AW_ERROR, AW_ERROR_FORMAT, "%s: the %s of column '%s' stands in another column, too%s", from->name,
+              heading_twice ? "heading" : "value", column->heading, heading_twice ? " (or is empty)" : "");
+  return FALSE;
 }
 
 static gboolean read_columns(const Source *from, AwLayout *layout, GError **error)
@@ -216,6 +224,9 @@ static gboolean read_columns(const Source *from, AwLayout *layout, GError **erro
     if (g_str_has_prefix(groups[i], COLUMN_PREFIX) && !read_column(from, groups[i], layout, error))
       return FALSE;
   g_ptr_array_add(layout->headings, NULL);
+  for (gsize i = 0; i < MIN(layout->columns->len, MAX_COLUMNS); i++)
+    if (!check_once(from, layout, i, error))
+      return FALSE;
   if (layout->columns->len > MAX_COLUMNS) {
     g_set_error(error, AW_ERROR, AW_ERROR_RANGE, "%s has %u columns; the limit is %d", from->name, layout->columns->len,
                 MAX_COLUMNS);

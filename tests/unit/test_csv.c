@@ -72,6 +72,14 @@ static void hash_after_header_is_data(void)
   g_assert_cmpstr(aw_csv_text(csv, 0, 0), ==, "#1");
 }
 
+static void blanks_as_separator(void)
+{
+  g_autoptr(AwCsv) csv = parse("a b c\n1 2 \"3 4\"\n\n  \n", ' ');
+  g_assert_cmpuint(aw_csv_n_rows(csv), ==, 2);
+  g_assert_cmpstr(aw_csv_text(csv, 0, 2), ==, "3 4");
+  g_assert_cmpstr(aw_csv_text(csv, 1, 2), ==, "");
+}
+
 static void header_alone(void)
 {
   g_autoptr(AwCsv) csv = parse("a,b", ',');
@@ -154,11 +162,17 @@ static void append(void)
 {
   static const struct {
     const char *text, *field;
-  } cases[] = { { "plain", "plain" }, { "a,b", "\"a,b\"" },
-                { "a;b", "a;b" },     { "say \"hi\"", "\"say \"\"hi\"\"\"" },
-                { "", "" },           { "two\nlines", "\"two\nlines\"" },
-                { "#1", "\"#1\"" },   { " x", "\" x\"" },
-                { "x ", "\"x \"" },   { "cr\r", "\"cr\r\"" } };
+  } cases[] = { { "plain", "plain" },
+                { "a,b", "\"a,b\"" },
+                { "a;b", "a;b" },
+                { "say \"hi\"", "\"say \"\"hi\"\"\"" },
+                { "", "" },
+                { "two\nlines", "\"two\nlines\"" },
+                { "#1", "\"#1\"" },
+                { " x", "\" x\"" },
+                { "x ", "\"x \"" },
+                { "cr\r", "\"cr\r\"" },
+                { "\xef\xbb\xbfx", "\"\xef\xbb\xbfx\"" } };
   for (gsize i = 0; i < G_N_ELEMENTS(cases); i++) {
     g_autoptr(GString) out = g_string_new(NULL);
     aw_csv_append(out, cases[i].text, ',');
@@ -210,6 +224,7 @@ int main(int argc, char **argv)
   aw_check_add("/base/csv/quoting", quoting);
   aw_check_add("/base/csv/line_ends_and_bom", line_ends_and_bom);
   aw_check_add("/base/csv/hash_after_header_is_data", hash_after_header_is_data);
+  aw_check_add("/base/csv/blanks_as_separator", blanks_as_separator);
   aw_check_add("/base/csv/header_alone", header_alone);
   aw_check_add("/base/csv/refused", refused);
   aw_check_add("/base/csv/without_header", without_header);

@@ -96,32 +96,34 @@ static void bad_columns(void)
   refuse(HEAD COLUMNS "[column.c]\nvalue=text\n", AW_ERROR_NOT_FOUND, "no key 'text' in group [column.c]");
   refuse(HEAD COLUMNS "[column.c]\nvalue=text\ntext=a\\tb\n", AW_ERROR_FORMAT, "key text: the text has a line break");
   refuse(HEAD COLUMNS "[column.c]\nvalue=arm\nheading=a\n", AW_ERROR_FORMAT,
-         "group [column.c]: heading 'a' stands twice or is empty");
+         "l.layout: the heading of column 'a' stands in another column, too");
   refuse(HEAD COLUMNS "[column.c]\nvalue=arm\nheading=a\\nb\n", AW_ERROR_FORMAT, "key heading: the text has a line");
-  refuse(HEAD COLUMNS "[column. ]\nvalue=arm\n", AW_ERROR_FORMAT, "is empty");
+  refuse(HEAD COLUMNS "[column. ]\nvalue=arm\n", AW_ERROR_FORMAT, "heading of column ''|(or is empty)");
+  refuse(HEAD COLUMNS "[column.c]\nvalue=x\nunit=mm\n", AW_ERROR_FORMAT,
+         "l.layout: the value of column 'c' stands in another column, too");
   refuse(HEAD COLUMNS "[column.c]\nvalue=arm\nunit=mm\n", AW_ERROR_FORMAT, "no use for key 'unit'");
   refuse(HEAD COLUMNS "[column.c]\nvalue=target\nfirst=x\n", AW_ERROR_FORMAT, "'x' is not a whole number");
 }
 
 static void bad_positions(void)
 {
-  refuse(HEAD COLUMNS "[column.c]\nvalue=x\nunit=inch\n", AW_ERROR_FORMAT,
-         "key unit: 'inch' is none of um, mm, nm, m, step");
-  refuse(HEAD COLUMNS "[column.c]\nvalue=x\nunit=step\n", AW_ERROR_NOT_FOUND, "no key 'step-um' in group [column.c]");
-  refuse(HEAD COLUMNS "[column.c]\nvalue=x\nunit=step\nstep-um=0\n", AW_ERROR_RANGE, "'0' is outside 1e-06 to 10000");
-  refuse(HEAD COLUMNS "[column.c]\nvalue=x\nunit=mm\nstep-um=1\n", AW_ERROR_FORMAT, "no use for key 'step-um'");
-  refuse(HEAD COLUMNS "[column.c]\nvalue=x\nsign=0\n", AW_ERROR_FORMAT, "key sign: '0' is none of +1, 1, -1");
-  refuse(HEAD COLUMNS "[column.c]\nvalue=x\noffset=nan\n", AW_ERROR_FORMAT, "'nan' is not a finite number");
-  refuse(HEAD COLUMNS "[column.c]\nvalue=x\noffset=1e13\n", AW_ERROR_RANGE, "'1e13' is outside");
-  refuse(HEAD COLUMNS "[column.c]\nvalue=x\ndecimals=13\n", AW_ERROR_RANGE, "key decimals: '13' is outside 0 to 12");
-  refuse(HEAD COLUMNS "[column.c]\nvalue=x\ndecimals=-1\n", AW_ERROR_RANGE, "'-1' is outside 0 to 12");
+  refuse(HEAD "[column.c]\nvalue=x\nunit=inch\n", AW_ERROR_FORMAT, "key unit: 'inch' is none of um, mm, nm, m, step");
+  refuse(HEAD "[column.c]\nvalue=x\nunit=step\n", AW_ERROR_NOT_FOUND, "no key 'step-um' in group [column.c]");
+  refuse(HEAD "[column.c]\nvalue=x\nunit=step\nstep-um=0\n", AW_ERROR_RANGE, "'0' is outside 1e-06 to 10000");
+  refuse(HEAD "[column.c]\nvalue=x\nunit=mm\nstep-um=1\n[column.d]\nvalue=y\n", AW_ERROR_FORMAT,
+         "no use for key 'step-um'");
+  refuse(HEAD "[column.c]\nvalue=x\nsign=0\n", AW_ERROR_FORMAT, "key sign: '0' is none of +1, 1, -1");
+  refuse(HEAD "[column.c]\nvalue=x\noffset=nan\n", AW_ERROR_FORMAT, "'nan' is not a finite number");
+  refuse(HEAD "[column.c]\nvalue=x\noffset=1e13\n", AW_ERROR_RANGE, "'1e13' is outside");
+  refuse(HEAD "[column.c]\nvalue=x\ndecimals=13\n", AW_ERROR_RANGE, "key decimals: '13' is outside 0 to 12");
+  refuse(HEAD "[column.c]\nvalue=x\ndecimals=-1\n", AW_ERROR_RANGE, "'-1' is outside 0 to 12");
 }
 
 static void too_many_columns(void)
 {
   g_autoptr(GString) text = g_string_new(HEAD COLUMNS);
   for (int i = 0; i < 98; i++)
-    g_string_append_printf(text, "[column.c%d]\nvalue=arm\n", i);
+    g_string_append_printf(text, "[column.c%d]\nvalue=text\ntext=t\n", i);
   accept(text->str);
   g_string_append(text, "[column.last]\nvalue=arm\n");
   refuse(text->str, AW_ERROR_RANGE, "l.layout has 101 columns; the limit is 100");
