@@ -69,7 +69,7 @@ static void place_frames(SampleDish *dish)
     AwScanPoint at = { middle.x_um + (column - 1) * STEP_UM, middle.y_um + (row - 1) * STEP_UM };
     at.x_um += 0.9 * aw_random_normal(&r);
     at.y_um += 0.9 * aw_random_normal(&r);
-    frame->view = (AwRenderView){ SAMPLE_SIDE_PX, SAMPLE_SIDE_PX, sample_pixel_map(), at };
+    frame->view = (AwRenderView){ SAMPLE_SIDE_PX, SAMPLE_SIDE_PX, sample_pixel_map(), at, (guint)i };
     frame->reading.x_um = to_tenths(at.x_um + 0.05 * aw_random_normal(&r));
     frame->reading.y_um = to_tenths(at.y_um + 0.05 * aw_random_normal(&r));
     frame->taken_at_unix_s = FIRST_EXPOSURE_UNIX_S + floor(FRAME_S * i);

@@ -27,8 +27,7 @@ static gboolean draw_item(gsize item, guint worker, gpointer data, GError **erro
   (void)worker;
   Drawing *drawing = data;
   const SampleDish *dish = drawing->dish;
-  drawing->image[item] =
-      aw_render_frame(dish->truths, &dish->frame[item].view, &dish->channel->camera, (guint)item, error);
+  drawing->image[item] = aw_render_frame(dish->truths, &dish->frame[item].view, &dish->channel->camera, error);
   return drawing->image[item] != NULL;
 }
 
@@ -126,7 +125,7 @@ static gboolean run(const Options *o, GError **error)
     return FALSE;
   }
   if (o->bigtiff_side)
-    return sample_write_bigtiff(o->rest[0], o->bigtiff_side, 350, error);
+    return sample_write_bigtiff(o->rest[0], o->bigtiff_side, o->per_frame, (guint)o->n_threads, error);
   if (o->n_stress)
     return sample_write_stress(o->rest[0], o->n_stress, o->side, o->per_frame, (guint)o->n_threads, error);
   return put_sample(o, error);
@@ -140,7 +139,7 @@ int main(int argc, char **argv)
     { "outlines", 0, 0, G_OPTION_ARG_NONE, &o.outlines, "also truth_outlines.csv, the true outlines", NULL },
     { "channel", 0, 0, G_OPTION_ARG_STRING, &o.channel, "what to draw (nuclei)", "NAME" },
     { "stress", 0, 0, G_OPTION_ARG_INT, &o.n_stress, "a scan of N large frames for load tests", "N" },
-    { "nuclei-per-frame", 0, 0, G_OPTION_ARG_INT, &o.per_frame, "with --stress (1500)", "K" },
+    { "nuclei-per-frame", 0, 0, G_OPTION_ARG_INT, &o.per_frame, "or per 2048 x 2048 px of a BigTIFF (1500)", "K" },
     { "side", 0, 0, G_OPTION_ARG_INT, &o.side, "of a frame in px, with --stress (2048)", "PX" },
     { "bigtiff", 0, 0, G_OPTION_ARG_INT, &o.bigtiff_side, "one tiled BigTIFF of SIDE x SIDE px", "SIDE" },
     { "threads", 0, 0, G_OPTION_ARG_INT, &o.n_threads, "0: one per processor", "N" },

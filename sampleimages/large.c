@@ -1,19 +1,17 @@
 /* Aimwell - SPDX-License-Identifier: GPL-3.0-or-later */
 #include "large.h"
 
-#include <tiffio.h>
-
 #include "base/error.h"
 #include "base/output.h"
 #include "base/pool.h"
 #include "base/text.h"
 #include "nuclei/population.h"
+#include "plain.h"
 
 #define SEED G_GUINT64_CONSTANT(977)
 #define OVERLAP_FRAC 0.1
-#define TILE_PX 256
 
-static GPtrArray *populate(AwScanPoint from, AwScanPoint to, int n_nuclei, GError **error)
+GPtrArray *sample_populate(AwScanPoint from, AwScanPoint to, int n_nuclei, guint64 seed, GError **error)
 {
   AwPopulationPlan plan = { .from = from,
                             .to = to,
@@ -24,7 +22,7 @@ static GPtrArray *populate(AwScanPoint from, AwScanPoint to, int n_nuclei, GErro
                             .gap_um = 3.0,
                             .patchy_frac = 0.3,
                             .light_e = 4.8e5,
-                            .seed = SEED };
+                            .seed = seed };
   return aw_population_new(&plan, error);
 }
 
@@ -34,32 +32,18 @@ static gboolean refuse(const char *path, GError **error)
   return FALSE;
 }
 
-static void describe(TIFF *tiff, int width_px, int height_px)
-{
-  TIFFSetField(tiff, TIFFTAG_IMAGEWIDTH, (guint32)width_px);
-  TIFFSetField(tiff, TIFFTAG_IMAGELENGTH, (guint32)height_px);
-  TIFFSetField(tiff, TIFFTAG_BITSPERSAMPLE, 16);
-  TIFFSetField(tiff, TIFFTAG_SAMPLESPERPIXEL, 1);
-  TIFFSetField(tiff, TIFFTAG_PHOTOMETRIC, PHOTOMETRIC_MINISBLACK);
-  TIFFSetField(tiff, TIFFTAG_COMPRESSION, COMPRESSION_NONE);
-}
+#define STRIP_ROWS 64
 
-static gboolean write_plain(const char *path, const guint16 *counts, int side_px, GError **error)
+static gboolean write_plain(const char *path, const AwImage *image, GError **error)
 {
-  TIFF *tiff = TIFFOpen(path, "w");
+  int side_px = image->width_px;
+  g_autoptr(PlainTiff) tiff = plain_tiff_open(path, side_px, side_px, 0, FALSE, error);
   if (!tiff)
-    return refuse(path, error);
-  describe(tiff, side_px, side_px);
-  TIFFSetField(tiff, TIFFTAG_ROWSPERSTRIP, 64);
-  gboolean ok = TRUE;
-  for (int y = 0; ok && y < side_px; y += 64) {
-    tmsize_t n = (tmsize_t)MIN(64, side_px - y) * side_px * 2;
-    g_autofree void *strip = g_memdup2(counts + (gsize)y * (gsize)side_px, (gsize)n);
-    ok = TIFFWriteEncodedStrip(tiff, (guint32)(y / 64), strip, n) == n;
-  }
-  ok = ok && TIFFFlush(tiff);
-  TIFFClose(tiff);
-  return ok || refuse(path, error);
+    return FALSE;
+  for (int y = 0; y < side_px; y += STRIP_ROWS)
+    plain_tiff_add(tiff, (const guint16 *)image->pixels + (gsize)y * (gsize)side_px,
+                   (gsize)MIN(STRIP_ROWS, side_px - y) * (gsize)side_px);
+  return plain_tiff_finish(tiff, STRIP_ROWS, error);
 }
 
 typedef struct {
@@ -80,8 +64,8 @@ static gboolean stress_item(gsize item, guint worker, gpointer data, GError **er
   const Stress *stress = data;
   g_autofree char *file = stress_file((guint)item);
   g_autofree char *path = g_build_filename(stress->dir, file, NULL);
-  g_autoptr(AwImage) image = aw_render_frame(stress->truths, stress->view + item, &stress->camera, (guint)item, error);
-  return image && write_plain(path, image->pixels, image->width_px, error);
+  g_autoptr(AwImage) image = aw_render_frame(stress->truths, stress->view + item, &stress->camera, error);
+  return image && write_plain(path, image, error);
 }
 
 static gboolean write_table(const char *dir, const char *name, GString *table, GError **error)
@@ -128,67 +112,15 @@ gboolean sample_write_stress(const char *dir, int n_frames, int side_px, int nuc
   double frame_um = side_px * aw_pixel_map_scale(&map), step = frame_um * (1.0 - OVERLAP_FRAC), edge = 0.56 * frame_um;
   AwScanPoint from = { -edge, -edge }, to = { (columns - 1) * step + edge, (rows - 1) * step + edge };
   double share = (to.x_um - from.x_um) * (to.y_um - from.y_um) / (frame_um * frame_um);
-  g_autoptr(GPtrArray) truths = populate(from, to, (int)(nuclei_per_frame * share), error);
+  g_autoptr(GPtrArray) truths = sample_populate(from, to, (int)(nuclei_per_frame * share), SEED, error);
   if (!truths)
     return FALSE;
   g_autofree AwRenderView *view = g_new(AwRenderView, (gsize)n_frames);
   for (int i = 0; i < n_frames; i++) {
     AwScanPoint stage = { floor(10.0 * (i % columns) * step) / 10.0, floor(10.0 * (i / columns) * step) / 10.0 };
-    view[i] = (AwRenderView){ side_px, side_px, map, stage };
+    view[i] = (AwRenderView){ side_px, side_px, map, stage, (guint)i };
   }
   Stress stress = { dir, truths, sample_channel("nuclei")->camera, view };
   return aw_pool_run(n_threads, (gsize)n_frames, stress_item, &stress, "drawing frames", NULL, error) &&
          stress_tables(&stress, n_frames, error);
-}
-
-/* One row of tiles out of a band of rows; what lies beyond the image is 0. */
-static gboolean write_tiles(TIFF *tiff, const guint16 *band, int side_px, int y, int n_rows)
-{
-  g_autofree guint16 *tile = g_new(guint16, TILE_PX * TILE_PX);
-  for (int x = 0; x < side_px; x += TILE_PX) {
-    memset(tile, 0, TILE_PX * TILE_PX * sizeof *tile);
-    for (int j = 0; j < n_rows; j++)
-      memcpy(tile + j * TILE_PX, band + (gsize)j * (gsize)side_px + x, (gsize)MIN(TILE_PX, side_px - x) * sizeof *tile);
-    guint32 index = TIFFComputeTile(tiff, (guint32)x, (guint32)y, 0, 0);
-    if (TIFFWriteEncodedTile(tiff, index, tile, TILE_PX * TILE_PX * 2) < 0)
-      return FALSE;
-  }
-  return TRUE;
-}
-
-static gboolean write_bands(TIFF *tiff, const char *path, const GPtrArray *truths, const AwRenderView *view,
-                            GError **error)
-{
-  const AwRenderCamera *camera = &sample_channel("nuclei")->camera;
-  int side_px = view->width_px;
-  g_autofree guint16 *band = g_try_new(guint16, (gsize)TILE_PX * (gsize)side_px);
-  if (!band)
-    return refuse(path, error);
-  for (int y = 0; y < side_px; y += TILE_PX) {
-    int y1 = MIN(y + TILE_PX, side_px);
-    if (!aw_render_rows(truths, view, camera, 0, y, y1, band, error))
-      return FALSE;
-    if (!write_tiles(tiff, band, side_px, y, y1 - y))
-      return refuse(path, error);
-  }
-  return TIFFFlush(tiff) || refuse(path, error);
-}
-
-gboolean sample_write_bigtiff(const char *path, int side_px, int nuclei_per_mpx, GError **error)
-{
-  AwRenderView view = { side_px, side_px, sample_pixel_map(), { 0.0, 0.0 } };
-  double edge = 0.53 * side_px * aw_pixel_map_scale(&view.map), mpx = 1e-6 * 1.06 * 1.06 * side_px * side_px;
-  g_autoptr(GPtrArray) truths =
-      populate((AwScanPoint){ -edge, -edge }, (AwScanPoint){ edge, edge }, (int)(nuclei_per_mpx * mpx), error);
-  if (!truths)
-    return FALSE;
-  TIFF *tiff = TIFFOpen(path, "w8");
-  if (!tiff)
-    return refuse(path, error);
-  describe(tiff, side_px, side_px);
-  TIFFSetField(tiff, TIFFTAG_TILEWIDTH, TILE_PX);
-  TIFFSetField(tiff, TIFFTAG_TILELENGTH, TILE_PX);
-  gboolean ok = write_bands(tiff, path, truths, &view, error);
-  TIFFClose(tiff);
-  return ok;
 }

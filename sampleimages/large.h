@@ -14,9 +14,13 @@ gboolean sample_write_stress(const char *dir, int n_frames, int side_px, int nuc
                              GError **error);
 
 /**
- * One BigTIFF of side_px x side_px, uncompressed 256 x 256 tiles, as one giant frame at stage reading (0, 0). Drawn a
- * row of tiles at a time, so that memory grows with the side, not its square.
+ * One BigTIFF of side_px x side_px, uncompressed 256 x 256 tiles, as one giant frame at stage reading (0, 0), with
+ * nuclei_per_block nuclei on every 2048 x 2048 px. Drawn a few rows of tiles at a time: memory grows with the side,
+ * not with its square.
  */
-gboolean sample_write_bigtiff(const char *path, int side_px, int nuclei_per_mpx, GError **error);
+gboolean sample_write_bigtiff(const char *path, int side_px, int nuclei_per_block, guint n_threads, GError **error);
+
+/* The population of large scans in a rectangle. A GPtrArray of AwTruth; errors as aw_population_new. */
+GPtrArray *sample_populate(AwScanPoint from, AwScanPoint to, int n_nuclei, guint64 seed, GError **error);
 
 #endif

@@ -177,10 +177,11 @@ static double shot(AwRandom *random, double mean, double z)
 }
 
 /* One Box-Muller pair a pixel: one deviate for the photons, one for the read noise. */
-static void expose_row(const AwRenderCamera *camera, guint frame, int y, const double *mean, int width, guint16 *counts)
+static void expose_row(const Board *board, int y, const double *mean, guint16 *counts)
 {
-  AwRandom random = aw_random_stream(camera->seed, ((guint64)frame << 32) + (guint64)y + 1);
-  for (int x = 0; x < width; x++) {
+  const AwRenderCamera *camera = board->camera;
+  AwRandom random = aw_random_stream(camera->seed, ((guint64)board->view->frame << 32) + (guint64)y + 1);
+  for (int x = 0; x < board->view->width_px; x++) {
     double r = sqrt(-2.0 * log(1.0 - aw_random_unit(&random))), t = 2.0 * G_PI * aw_random_unit(&random);
     double charge = shot(&random, mean[x], r * cos(t)) + camera->read_noise_e * r * sin(t);
     double value = floor(camera->offset + camera->counts_per_e * charge + 0.5);
@@ -217,8 +218,8 @@ static void board_clear(Board *board)
 }
 G_DEFINE_AUTO_CLEANUP_CLEAR_FUNC(Board, board_clear)
 
-gboolean aw_render_rows(const GPtrArray *truths, const AwRenderView *view, const AwRenderCamera *camera, guint frame,
-                        int y0, int y1, guint16 *counts, GError **error)
+gboolean aw_render_rows(const GPtrArray *truths, const AwRenderView *view, const AwRenderCamera *camera, int y0, int y1,
+                        guint16 *counts, GError **error)
 {
   g_return_val_if_fail(0 <= y0 && y0 < y1 && y1 <= view->height_px, FALSE);
   g_return_val_if_fail(camera->full_scale <= 65535.0, FALSE);
@@ -236,16 +237,16 @@ gboolean aw_render_rows(const GPtrArray *truths, const AwRenderView *view, const
   for (int y = y0; y < y1; y++) {
     light_row(&board, y, mean);
     add_hot_pixels(&board, y, mean);
-    expose_row(camera, frame, y, mean, view->width_px, counts + (gsize)(y - y0) * (gsize)view->width_px);
+    expose_row(&board, y, mean, counts + (gsize)(y - y0) * (gsize)view->width_px);
   }
   return TRUE;
 }
 
-AwImage *aw_render_frame(const GPtrArray *truths, const AwRenderView *view, const AwRenderCamera *camera, guint frame,
+AwImage *aw_render_frame(const GPtrArray *truths, const AwRenderView *view, const AwRenderCamera *camera,
                          GError **error)
 {
   g_autoptr(AwImage) image = aw_image_new(view->width_px, view->height_px, AW_SAMPLE_U16, error);
-  if (!image || !aw_render_rows(truths, view, camera, frame, 0, view->height_px, image->pixels, error))
+  if (!image || !aw_render_rows(truths, view, camera, 0, view->height_px, image->pixels, error))
     return NULL;
   image->full_scale = camera->full_scale;
   return g_steal_pointer(&image);

@@ -20,6 +20,7 @@ typedef struct {
   int width_px, height_px;
   AwPixelMap map;
   AwScanPoint stage; /* where the stage truly stands, which its reading may miss a little */
+  guint frame;       /* number of the frame, from 0: every frame has noise of its own */
 } AwRenderView;
 
 /* Microscope and camera of one channel. */
@@ -42,15 +43,15 @@ typedef struct {
 /**
  * aw_render_rows: draws rows y0 ... y1-1 of a frame into `counts` ((y1 - y0) x width_px values).
  *
- * truths: AwTruth, drawn in array order; those out of sight cost little. frame: number of the frame, from 0; its noise
- * depends on (camera seed, frame, row, column) only, so a frame drawn in bands equals one drawn whole, bit by bit, on
- * any number of threads. AW_ERROR_MEMORY when the drawing board cannot be had.
+ * truths: AwTruth, drawn in array order; those out of sight cost little. Noise depends on (camera seed, frame, row,
+ * column) only, so a frame drawn in bands equals one drawn whole, bit by bit, on any number of threads.
+ * AW_ERROR_MEMORY when the drawing board cannot be had.
  */
-gboolean aw_render_rows(const GPtrArray *truths, const AwRenderView *view, const AwRenderCamera *camera, guint frame,
-                        int y0, int y1, guint16 *counts, GError **error);
+gboolean aw_render_rows(const GPtrArray *truths, const AwRenderView *view, const AwRenderCamera *camera, int y0, int y1,
+                        guint16 *counts, GError **error);
 
 /* The whole frame as a 16-bit image whose full_scale is the camera's. */
-AwImage *aw_render_frame(const GPtrArray *truths, const AwRenderView *view, const AwRenderCamera *camera, guint frame,
+AwImage *aw_render_frame(const GPtrArray *truths, const AwRenderView *view, const AwRenderCamera *camera,
                          GError **error);
 
 /**

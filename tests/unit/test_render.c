@@ -11,7 +11,7 @@ static const AwRenderCamera clean = { .blur_px = 1.2, .counts_per_e = 0.01, .ful
 static AwRenderView view_at(double x_um, double y_um, double turn_rad)
 {
   double c = 0.65 * cos(turn_rad), s = 0.65 * sin(turn_rad);
-  return (AwRenderView){ 200, 160, { { c, -s, s, c }, AW_ORIGIN_ENTERED, 0.0 }, { x_um, y_um } };
+  return (AwRenderView){ 200, 160, { { c, -s, s, c }, AW_ORIGIN_ENTERED, 0.0 }, { x_um, y_um }, 3 };
 }
 
 static GPtrArray *one_nucleus(double x, double y, double light_e)
@@ -28,7 +28,7 @@ static GPtrArray *one_nucleus(double x, double y, double light_e)
 
 static AwImage *frame_of(const GPtrArray *truths, const AwRenderView *view, const AwRenderCamera *camera)
 {
-  AwImage *image = aw_render_frame(truths, view, camera, 3, NULL);
+  AwImage *image = aw_render_frame(truths, view, camera, NULL);
   g_assert_nonnull(image);
   return image;
 }
@@ -56,7 +56,7 @@ static AwPixelPoint weighted_centre(const AwImage *image)
 /* docs/geometry.md: S = (1000, 2000), A = 0.65 identity: q = (935, 2000) lies 100 px to the right of the centre. */
 static void runs_against_the_image(void)
 {
-  AwRenderView view = { 401, 301, { { 0.65, 0.0, 0.0, 0.65 }, AW_ORIGIN_ENTERED, 0.0 }, { 1000.0, 2000.0 } };
+  AwRenderView view = { 401, 301, { { 0.65, 0.0, 0.0, 0.65 }, AW_ORIGIN_ENTERED, 0.0 }, { 1000.0, 2000.0 }, 0 };
   AwShape disc = { { 935.0, 2000.0 }, 14.0, 14.0, 0.0, { 0 }, { 0 }, 0.0 };
   AwScanPoint outline[AW_SHAPE_N_POINTS];
   aw_shape_outline(&disc, outline);
@@ -154,8 +154,9 @@ static void hot_pixels(void)
   g_autoptr(GPtrArray) none = aw_truths_new();
   AwRenderView view = view_at(0.0, 0.0, 0.0);
   AwRenderCamera camera = { .counts_per_e = 0.01, .full_scale = 65535.0, .n_hot = 6, .hot_e = 1e6, .seed = 4 };
-  g_autoptr(AwImage) one = aw_render_frame(none, &view, &camera, 0, NULL);
-  g_autoptr(AwImage) two = aw_render_frame(none, &view, &camera, 1, NULL);
+  g_autoptr(AwImage) one = aw_render_frame(none, &view, &camera, NULL);
+  view.frame = 1;
+  g_autoptr(AwImage) two = aw_render_frame(none, &view, &camera, NULL);
   int n = 0;
   for (int y = 0; y < 160; y++)
     for (int x = 0; x < 200; x++) {
@@ -195,9 +196,10 @@ static void bands(void)
   g_autofree guint16 *rows = g_new(guint16, 200 * 160);
   const int cut[] = { 0, 1, 37, 96, 160 };
   for (int i = 0; i < 4; i++)
-    g_assert_true(aw_render_rows(truths, &view, &camera, 3, cut[i], cut[i + 1], rows + 200 * cut[i], NULL));
+    g_assert_true(aw_render_rows(truths, &view, &camera, cut[i], cut[i + 1], rows + 200 * cut[i], NULL));
   g_assert_cmpmem(rows, 64000, whole->pixels, 64000);
-  g_assert_true(aw_render_rows(truths, &view, &camera, 4, 0, 160, rows, NULL));
+  view.frame = 4;
+  g_assert_true(aw_render_rows(truths, &view, &camera, 0, 160, rows, NULL));
   g_assert_true(memcmp(rows, whole->pixels, 64000) != 0);
 }
 
@@ -226,10 +228,10 @@ static void memory(void)
   AwRenderView view = view_at(0.0, 0.0, 0.0);
   view.width_px = view.height_px = G_MAXINT - 16;
   g_autoptr(GError) error = NULL;
-  g_assert_false(aw_render_rows(none, &view, &clean, 0, 0, view.height_px, NULL, &error));
+  g_assert_false(aw_render_rows(none, &view, &clean, 0, view.height_px, NULL, &error));
   g_assert_error(error, AW_ERROR, AW_ERROR_MEMORY);
   g_clear_error(&error);
-  g_assert_null(aw_render_frame(none, &view, &clean, 0, &error));
+  g_assert_null(aw_render_frame(none, &view, &clean, &error));
   g_assert_error(error, AW_ERROR, AW_ERROR_RANGE);
   g_clear_error(&error);
   g_assert_null(aw_render_labels(none, &view, &error));
