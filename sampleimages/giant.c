@@ -94,7 +94,7 @@ static gboolean draw_bands(Giant *giant, PlainTiff *tiff, guint n_threads, GErro
       write_tiles(tiff, giant->band[i], side, band_end(giant, y) - y);
     }
   }
-  return plain_tiff_finish(tiff, 0, error);
+  return plain_tiff_finish(tiff, 0, sample_channel("nuclei")->camera.full_scale, error);
 }
 
 static void giant_clear(Giant *giant, guint n_threads)

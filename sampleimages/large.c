@@ -43,7 +43,7 @@ static gboolean write_plain(const char *path, const AwImage *image, GError **err
   for (int y = 0; y < side_px; y += STRIP_ROWS)
     plain_tiff_add(tiff, (const guint16 *)image->pixels + (gsize)y * (gsize)side_px,
                    (gsize)MIN(STRIP_ROWS, side_px - y) * (gsize)side_px);
-  return plain_tiff_finish(tiff, STRIP_ROWS, error);
+  return plain_tiff_finish(tiff, STRIP_ROWS, image->full_scale, error);
 }
 
 typedef struct {

@@ -79,9 +79,9 @@ static void put_entry(PlainTiff *tiff, guint16 tag, guint16 type, guint64 n, gui
   }
 }
 
-static void put_directory(PlainTiff *tiff, int rows_per_strip)
+static void put_directory(PlainTiff *tiff, int rows_per_strip, double full_scale)
 {
-  guint64 n = tiff->piece->len / 2, wide = tiff->big ? 8 : 4, n_entries = tiff->tile_px ? 10 : 9;
+  guint64 n = tiff->piece->len / 2, wide = tiff->big ? 8 : 4, n_entries = tiff->tile_px ? 11 : 10;
   guint16 type = tiff->big ? LONG8 : LONG;
   guint64 after = tiff->at + (tiff->big ? 8 : 2) + n_entries * (tiff->big ? 20 : 12) + wide;
   const guint64 *piece = (const guint64 *)(const void *)tiff->piece->data;
@@ -101,7 +101,9 @@ static void put_directory(PlainTiff *tiff, int rows_per_strip)
   if (!tiff->tile_px) {
     put_entry(tiff, 278, type, 1, (guint64)rows_per_strip);
     put_entry(tiff, 279, type, n, sizes);
-  } else {
+  }
+  put_entry(tiff, 281, SHORT, 1, (guint64)full_scale);
+  if (tiff->tile_px) {
     put_entry(tiff, 322, type, 1, (guint64)tiff->tile_px);
     put_entry(tiff, 323, type, 1, (guint64)tiff->tile_px);
     put_entry(tiff, 324, type, n, offsets);
@@ -113,9 +115,9 @@ static void put_directory(PlainTiff *tiff, int rows_per_strip)
       put_wide(tiff, piece[2 * i + k]);
 }
 
-gboolean plain_tiff_finish(PlainTiff *tiff, int rows_per_strip, GError **error)
+gboolean plain_tiff_finish(PlainTiff *tiff, int rows_per_strip, double full_scale, GError **error)
 {
-  put_directory(tiff, rows_per_strip);
+  put_directory(tiff, rows_per_strip, full_scale);
   return aw_output_commit(tiff->out, error);
 }
 

@@ -17,7 +17,7 @@ PlainTiff *plain_tiff_open(const char *path, int width_px, int height_px, int ti
 void plain_tiff_add(PlainTiff *tiff, const guint16 *pixels, gsize n);
 
 /* Writes the directory and renames the file to its name. rows_per_strip: of all strips but the last; 0 with tiles. */
-gboolean plain_tiff_finish(PlainTiff *tiff, int rows_per_strip, GError **error);
+gboolean plain_tiff_finish(PlainTiff *tiff, int rows_per_strip, double full_scale, GError **error);
 void plain_tiff_free(PlainTiff *tiff);
 G_DEFINE_AUTOPTR_CLEANUP_FUNC(PlainTiff, plain_tiff_free)
 

@@ -9,6 +9,7 @@
 #define FAR_GAP_UM 30.0
 #define CROWD_UM 0.3 /* nuclei of a clump keep this much from those they were not laid against */
 #define N_PATCH_WAVES 6
+#define POORLY_STAINED_FRAC 0.05
 
 typedef struct {
   const AwPopulationPlan *plan;
@@ -150,6 +151,8 @@ static AwTruth *interphase(const Ground *ground, AwScanPoint at, AwRandom *r)
   shape.minor_um = width / sqrt(aspect);
   AwTruth *truth = from_shape(AW_TRUTH_INTERPHASE, &shape, r);
   truth->light_e = ground->plan->light_e * content * exp(0.07 * tame_normal(r));
+  if (aw_random_unit(r) < POORLY_STAINED_FRAC)
+    truth->light_e *= between(r, 0.45, 0.65);
   truth->dome_frac = between(r, 0.25, 0.5);
   truth->texture_frac = between(r, 0.12, 0.26);
   return truth;

@@ -23,7 +23,8 @@ typedef struct {
 /**
  * aw_population_new: AwTruth in the order they were laid down; gaps are measured up to 30 um.
  *
- * DNA content is 1 (55 %), 2 (25 %) or between, and light follows it with a spread of 7 %. The same plan gives the
+ * DNA content is 1 (55 %), 2 (25 %) or between, and light follows it with a spread of 7 %; every twentieth
+ * interphase nucleus has taken up only about half the stain. The same plan gives the
  * same population. AW_ERROR_RANGE when the rectangle is too small for so many nuclei: it says how many found room.
  */
 GPtrArray *aw_population_new(const AwPopulationPlan *plan, GError **error);

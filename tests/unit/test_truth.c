@@ -129,7 +129,7 @@ static void population(void)
       g_ptr_array_add(nuclei, t);
     if (t->kind == AW_TRUTH_INTERPHASE) {
       g_assert_true(t->major_um > 9.5 && t->major_um < 27.0);
-      g_assert_true(t->light_e > 0.8e5 && t->light_e < 2.4e5);
+      g_assert_true(t->light_e > 0.38e5 && t->light_e < 2.4e5);
     }
   }
   g_assert_cmpuint(n, ==, 200);
