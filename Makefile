@@ -124,7 +124,7 @@ test: need-test ## install what is missing, then unit and command line tests
 unit-and-cli: $(unit_bin) $(BIN)/aimwell
 	@AIMWELL=$(abspath $(BIN)/aimwell) $(TAP) --args '--tap -k' $(unit_bin) tests/cli/run.py
 
-test-reference: $(BIN)/aimwell $(reference_bin) ## outside checks; opendata ones are skipped by name where it is absent
+test-reference: $(BIN)/aimwell $(BIN)/generate-sample $(reference_bin) ## outside checks; opendata ones are skipped by name where it is absent
 	@AIMWELL=$(abspath $(BIN)/aimwell) BIN=$(abspath $(BIN)) $(TAP) --timeout 1500 $(reference_run)
 
 asan: ## unit and command line tests under the address and undefined sanitizers

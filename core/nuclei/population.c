@@ -135,8 +135,8 @@ static double draw_content(AwRandom *r)
 static double make_kidney(AwShape *shape, AwRandom *r)
 {
   shape->wave_cos[2] -= 0.045;
-  shape->bend_rad = between(r, 0.8, 1.35);
-  return between(r, 1.5, 1.9);
+  shape->bend_rad = between(r, 0.7, 1.15);
+  return between(r, 1.4, 1.7);
 }
 
 static AwTruth *interphase(const Ground *ground, AwScanPoint at, AwRandom *r)
@@ -154,7 +154,7 @@ static AwTruth *interphase(const Ground *ground, AwScanPoint at, AwRandom *r)
   if (aw_random_unit(r) < POORLY_STAINED_FRAC)
     truth->light_e *= between(r, 0.45, 0.65);
   truth->dome_frac = between(r, 0.25, 0.5);
-  truth->texture_frac = between(r, 0.12, 0.26);
+  truth->texture_frac = between(r, 0.1, 0.2);
   return truth;
 }
 
@@ -170,7 +170,7 @@ static AwTruth *mitotic(const Ground *ground, AwScanPoint at, gboolean ring, dou
   AwTruth *truth = from_shape(AW_TRUTH_MITOTIC, &shape, r);
   truth->light_e = ground->plan->light_e * 2.0 * exp(0.07 * tame_normal(r));
   truth->dome_frac = ring ? -0.75 : 0.3;
-  truth->texture_frac = ring ? 0.3 : 0.15;
+  truth->texture_frac = ring ? 0.2 : 0.15;
   return truth;
 }
 

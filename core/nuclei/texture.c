@@ -48,7 +48,7 @@ static void place_nucleoli(AwTexture *texture, const AwTruth *truth, AwRandom ra
     double r = 0.6 * sqrt(aw_random_unit(&random)), t = 2.0 * G_PI * aw_random_unit(&random);
     double u = r * cos(t) * truth->major_um / 2.0, v = r * sin(t) * truth->minor_um / 2.0;
     double radius = truth->minor_um * (0.05 + 0.06 * aw_random_unit(&random));
-    texture->nucleolus[i] = (Nucleolus){ u * c - v * s, u * s + v * c, radius, 0.3 + 0.35 * aw_random_unit(&random) };
+    texture->nucleolus[i] = (Nucleolus){ u * c - v * s, u * s + v * c, radius, 0.25 + 0.3 * aw_random_unit(&random) };
   }
 }
 
