@@ -1,13 +1,11 @@
 /* Aimwell - SPDX-License-Identifier: GPL-3.0-or-later */
 /* Fuzzing of the dish record: bytes that claim to be one are opened, checked, read whole, and undone and redone. */
-#include <stddef.h>
-#include <stdint.h>
+#include "fuzz.h"
+
 #include <stdio.h>
 #include <unistd.h>
 
 #include "record/files.h"
-
-int LLVMFuzzerTestOneInput(const uint8_t *bytes, size_t n_bytes);
 
 static void read_all(AwRecord *record)
 {
@@ -36,24 +34,27 @@ static void change(AwRecord *record)
   }
 }
 
-int LLVMFuzzerTestOneInput(const uint8_t *bytes, size_t n_bytes)
+static gboolean write_file(const char *path, const uint8_t *bytes, size_t n)
 {
-  static char path[64]; /* one file a process, in memory where the machine has such a place */
-  if (!path[0])
-    snprintf(path, sizeof path, "%s/aimwell-fuzz-%ld.dish", access("/dev/shm", W_OK) == 0 ? "/dev/shm" : "/tmp",
-             (long)getpid());
   FILE *file = fopen(path, "wb");
-  if (!file)
-    return 0;
-  size_t n_written = fwrite(bytes, 1, n_bytes, file);
-  if (fclose(file) == 0 && n_written == n_bytes) {
-    AwRecord *record = aw_record_open(path, AW_RECORD_WRITE, NULL);
-    if (record) {
-      read_all(record);
-      change(record);
-    }
-    aw_record_free(record);
-  }
-  unlink(path);
-  return 0;
+  size_t n_written = file ? fwrite(bytes, 1, n, file) : 0;
+  return file && fclose(file) == 0 && n_written == n;
 }
+
+void fuzz_record(const uint8_t *bytes, size_t n)
+{
+  /* One name for each process, in memory where the machine has such a place. */
+  g_autofree char *path =
+      g_strdup_printf("%s/aimwell-fuzz-%ld.dish", access("/dev/shm", W_OK) ? "/tmp" : "/dev/shm", (long)getpid());
+  g_autofree char *journal = g_strconcat(path, "-journal", NULL);
+  AwRecord *record = write_file(path, bytes, n) ? aw_record_open(path, AW_RECORD_WRITE, NULL) : NULL;
+  if (record) {
+    read_all(record);
+    change(record);
+  }
+  aw_record_free(record);
+  unlink(path);
+  unlink(journal);
+}
+
+FUZZ_ENTRY(record)
