@@ -123,8 +123,9 @@ AwTiffFile *aw_tiff_file_open(const char *path, GError **error)
   if (fd < 0)
     return NULL;
   TIFFOpenOptions *options = aw_tiff_options(&file->log);
-  /* No memory map ("m"): a file that shrinks while it is read must be an error, not a signal. */
-  file->tif = TIFFFdOpenExt(fd, path, "rhm", options);
+  /* No memory map ("m"): a file that shrinks while it is read must be an error, not a signal. Strips as they are ("c");
+   * the directory is read below ("h"). */
+  file->tif = TIFFFdOpenExt(fd, path, "rhmc", options);
   TIFFOpenOptionsFree(options);
   if (!file->tif) {
     close(fd);
@@ -146,6 +147,24 @@ void aw_tiff_file_free(AwTiffFile *file)
   g_free(file->place);
   g_free(file->path);
   g_free(file);
+}
+
+gboolean aw_tiff_file_bytes(const AwTiffFile *file, gint64 at, void *out, gsize n, GError **error)
+{
+  guint8 *to = out;
+  while (n > 0) {
+    gssize got = pread(TIFFFileno(file->tif), to, n, at);
+    if (got < 0 && errno == EINTR)
+      continue;
+    if (got < 0)
+      return aw_tiff_fail(file, AW_ERROR_IO, error, "cannot be read: %s", g_strerror(errno));
+    if (got == 0)
+      return aw_tiff_fail(file, AW_ERROR_FORMAT, error, "is cut off: it ends at byte %" G_GINT64_FORMAT, at);
+    to += got;
+    at += got;
+    n -= (gsize)got;
+  }
+  return TRUE;
 }
 
 gboolean aw_tiff_file_choose(AwTiffFile *file, int directory, int page, GError **error)

@@ -39,6 +39,9 @@ G_DEFINE_AUTOPTR_CLEANUP_FUNC(AwTiffFile, aw_tiff_file_free)
 /* Makes a directory current; `page` is what the user calls it. */
 gboolean aw_tiff_file_choose(AwTiffFile *file, int directory, int page, GError **error);
 
+/* The n bytes from byte `at` on. */
+gboolean aw_tiff_file_bytes(const AwTiffFile *file, gint64 at, void *out, gsize n, GError **error);
+
 /* AW_ERROR_RANGE when the current directory's width or height is outside the limits. */
 gboolean aw_tiff_file_check_size(const AwTiffFile *file, GError **error);
 

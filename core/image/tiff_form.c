@@ -238,12 +238,30 @@ static gboolean check_data(const AwTiffFile *file, const AwTiffForm *form, GErro
   return TRUE;
 }
 
+/* Most files without compression are one piece: it can be read anywhere without a strip in between. */
+static void find_stored(const AwTiffFile *file, AwTiffForm *form)
+{
+  form->is_stored = !form->is_tiled && tag16(file, TIFFTAG_COMPRESSION, COMPRESSION_NONE) == COMPRESSION_NONE &&
+                    tag16(file, TIFFTAG_FILLORDER, FILLORDER_MSB2LSB) == FILLORDER_MSB2LSB;
+  for (guint32 plane = 0; form->is_stored && plane < (guint32)(form->is_separate ? form->n_samples : 1); plane++) {
+    guint64 next = TIFFGetStrileOffset(file->tif, plane * form->n_striles);
+    for (guint32 i = 0; i < form->n_striles && form->is_stored; i++) {
+      form->is_stored = TIFFGetStrileOffset(file->tif, plane * form->n_striles + i) == next;
+      next += (guint64)decoded_bytes(form, i);
+    }
+  }
+}
+
 gboolean aw_tiff_form_read(const AwTiffFile *file, AwTiffForm *form, GError **error)
 {
   *form = (AwTiffForm){ 0 };
-  return check_size(file, form, error) && check_compression(file, error) && check_samples(file, form, error) &&
-         check_bits(file, form, error) && check_orientation(file, error) && check_strile_size(file, form, error) &&
-         check_claim(file, form, error) && count_striles(file, form, error) && check_data(file, form, error);
+  gboolean ok = check_size(file, form, error) && check_compression(file, error) && check_samples(file, form, error) &&
+                check_bits(file, form, error) && check_orientation(file, error) &&
+                check_strile_size(file, form, error) && check_claim(file, form, error) &&
+                count_striles(file, form, error) && check_data(file, form, error);
+  if (ok)
+    find_stored(file, form);
+  return ok;
 }
 
 double aw_tiff_form_pixel_um(const AwTiffFile *file, guint32 tag)

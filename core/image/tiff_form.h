@@ -15,7 +15,8 @@ typedef struct {
   gboolean is_rgb;      /* three samples that may be one grey */
   gboolean is_separate; /* one plane of striles for each sample */
   gboolean is_tiled;
-  AwPixelForm pixel; /* of a decoded row: n_samples is 1 when is_separate */
+  gboolean is_stored; /* not compressed, and the strips of each plane follow each other without a gap */
+  AwPixelForm pixel;  /* of a decoded row: n_samples is 1 when is_separate */
   int strile_width_px, strile_height_px;
   gsize row_bytes;   /* of a decoded strile */
   int n_across;      /* striles side by side; 1 for strips */

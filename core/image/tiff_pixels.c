@@ -76,7 +76,7 @@ static gboolean have_buffer(AwTiffPixels *pixels, GError **error)
 {
   const AwTiffForm *form = pixels->form;
   gint64 bytes = (gint64)form->row_bytes * form->strile_height_px;
-  gsize n = bytes > AW_TIFF_MAX_STRILE_BYTES ? form->row_bytes : (gsize)bytes;
+  gsize n = form->is_stored || bytes > AW_TIFF_MAX_STRILE_BYTES ? form->row_bytes : (gsize)bytes;
   if (!pixels->strile)
     pixels->strile = aw_try_alloc(n, 1, "a strip or tile of a TIFF file", error);
   return pixels->strile != NULL;
@@ -112,6 +112,54 @@ static gboolean is_plain(const Walk *walk)
   const AwTiffForm *form = walk->pixels->form;
   return !walk->compare && form->pixel.n_samples == 1 && !form->pixel.inverted &&
          (form->pixel.bits == 8 || form->pixel.bits == 16 || form->pixel.bits == 32);
+}
+
+/* Files may be of the other byte order; libtiff turns round only what it decodes itself. */
+static void swap_samples(const AwTiffPixels *pixels, void *values, gsize n)
+{
+  if (!TIFFIsByteSwapped(pixels->file->tif))
+    return;
+  if (pixels->form->pixel.bits == 16)
+    TIFFSwabArrayOfShort(values, (tmsize_t)n);
+  else if (pixels->form->pixel.bits == 32)
+    TIFFSwabArrayOfLong(values, (tmsize_t)n);
+}
+
+static gboolean read_stored_rows(const Walk *walk, gint64 at, GError **error)
+{
+  AwTiffPixels *p = walk->pixels;
+  const AwPixelForm *form = &p->form->pixel;
+  gsize row_bytes = p->form->row_bytes, pixel_bytes = (gsize)(form->bits * form->n_samples) / 8;
+  gboolean whole_bytes = form->bits % 8 == 0;
+  int first = whole_bytes ? walk->rect.x0 : 0; /* packed rows are read from their beginning */
+  gsize skip = (gsize)first * pixel_bytes, n = whole_bytes ? (gsize)walk->image->width_px * pixel_bytes : row_bytes;
+  if (!have_buffer(p, error))
+    return FALSE;
+  for (int y = walk->rect.y0; y < walk->rect.y1; y++) {
+    gint64 from = at + (gint64)row_bytes * y + (gint64)skip;
+    if (!aw_tiff_file_bytes(p->file, from, p->strile, n, error))
+      return FALSE;
+    swap_samples(p, p->strile, n * 8 / (gsize)form->bits);
+    if (!place_row(walk, p->strile, first, walk->rect.x0, walk->rect.x1, y, error))
+      return FALSE;
+  }
+  return TRUE;
+}
+
+static gboolean read_stored(const Walk *walk, GError **error)
+{
+  AwTiffPixels *p = walk->pixels;
+  gint64 at = (gint64)TIFFGetStrileOffset(p->file->tif, (guint32)walk->plane * p->form->n_striles);
+  if (!is_plain(walk) || walk->image->width_px != p->form->width_px)
+    return read_stored_rows(walk, at, error);
+  gsize n = p->form->row_bytes * (gsize)walk->image->height_px;
+  if (!aw_tiff_file_bytes(p->file, at + (gint64)p->form->row_bytes * walk->rect.y0, walk->image->pixels, n, error))
+    return FALSE;
+  swap_samples(p, walk->image->pixels, n * 8 / (gsize)p->form->pixel.bits);
+  for (int y = walk->rect.y0; y < walk->rect.y1; y++)
+    if (!check_finite(walk, walk->rect.x0, walk->rect.x1, y, error))
+      return FALSE;
+  return TRUE;
 }
 
 static gboolean decode_in_place(const Walk *walk, gint64 index, int y0, int n_rows, GError **error)
@@ -183,6 +231,8 @@ static gboolean read_tile(const Walk *walk, int column, int row, GError **error)
 static gboolean walk_striles(const Walk *walk, GError **error)
 {
   const AwTiffForm *form = walk->pixels->form;
+  if (form->is_stored)
+    return read_stored(walk, error);
   int height = form->strile_height_px, width = form->strile_width_px;
   for (int row = walk->rect.y0 / height; row <= (walk->rect.y1 - 1) / height; row++) {
     gint64 strip = (gint64)walk->plane * form->n_striles + row;
