@@ -60,6 +60,22 @@ static void cross(cairo_t *cr, double x, double y, double r)
   cairo_line_to(cr, x + r, y - r);
 }
 
+static void plus(cairo_t *cr, double x, double y, double r)
+{
+  cairo_move_to(cr, x - r, y);
+  cairo_line_to(cr, x + r, y);
+  cairo_move_to(cr, x, y - r);
+  cairo_line_to(cr, x, y + r);
+}
+
+static void triangle(cairo_t *cr, double x, double y, double r)
+{
+  cairo_move_to(cr, x, y - r);
+  cairo_line_to(cr, x + r, y + r * 0.8);
+  cairo_line_to(cr, x - r, y + r * 0.8);
+  cairo_close_path(cr);
+}
+
 void aw_style_draw_glyph(cairo_t *cr, AwGlyph glyph, double x, double y, double r)
 {
   cairo_set_dash(cr, NULL, 0, 0);
@@ -84,6 +100,15 @@ void aw_style_draw_glyph(cairo_t *cr, AwGlyph glyph, double x, double y, double 
   case AW_GLYPH_CROSS:
     cross(cr, x, y, r);
     cairo_stroke(cr);
+    break;
+  case AW_GLYPH_PLUS:
+    plus(cr, x, y, r);
+    cairo_set_line_width(cr, r * 0.3);
+    cairo_stroke(cr);
+    break;
+  case AW_GLYPH_TRIANGLE:
+    triangle(cr, x, y, r);
+    cairo_fill(cr);
     break;
   }
 }

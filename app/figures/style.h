@@ -20,8 +20,17 @@ extern const AwInk aw_ink_night;  /* ground of the dish, behind pictures */
 extern const AwInk aw_ink_casing; /* dark seam under bright lines, so that they read on bright nuclei */
 extern const AwInk aw_ink_tour;
 
-/* The small mark at a centroid; each state has its own, so that colour is never the only sign. */
-typedef enum { AW_GLYPH_NONE, AW_GLYPH_RING, AW_GLYPH_DIAMOND, AW_GLYPH_DISC, AW_GLYPH_CROSS } AwGlyph;
+/* The small mark at a centroid; each state has its own, so that colour is never the only sign. PLUS marks aim points,
+ * TRIANGLE asks for care. */
+typedef enum {
+  AW_GLYPH_NONE,
+  AW_GLYPH_RING,
+  AW_GLYPH_DIAMOND,
+  AW_GLYPH_DISC,
+  AW_GLYPH_CROSS,
+  AW_GLYPH_PLUS,
+  AW_GLYPH_TRIANGLE
+} AwGlyph;
 
 typedef struct {
   AwInk ink;

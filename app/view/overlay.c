@@ -3,11 +3,10 @@
 
 #include <stdlib.h>
 
-#include "figures/label.h"
 #include "view/overlay_parts.h"
 
 #define OUTLINE_FROM 6.0 /* typical diameter from which outlines are drawn, logical px */
-#define MAX_FULL 400     /* outlines that cairo strokes in one redraw: about 20 us each */
+#define MAX_FULL 1500    /* nuclei in view that are drawn in full style: about 4 us each */
 
 struct AwOverlay {
   AwRaster *raster;
@@ -87,12 +86,11 @@ gsize aw_overlay_draw(AwOverlay *overlay, cairo_t *cr, const AwScene *scene, con
   AwDetail detail = aw_overlay_detail(pass.size / pass.u, item->len);
   cairo_save(cr);
   aw_overlay_tour(&pass);
-  if (detail != AW_DETAIL_FULL)
-    aw_overlay_marks(&pass, item, detail == AW_DETAIL_HAIRLINE);
+  aw_overlay_nuclei(&pass, item, detail);
   aw_raster_paint(pass.raster, cr);
-  if (detail == AW_DETAIL_FULL)
-    aw_overlay_full(&pass, item);
-  aw_overlay_signs(&pass, item);
+  if (scene->show_labels)
+    aw_overlay_numbers(&pass, item);
+  aw_overlay_signs(&pass);
   cairo_restore(cr);
   return item->len;
 }

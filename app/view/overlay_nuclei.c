@@ -1,16 +1,23 @@
 /* Aimwell - SPDX-License-Identifier: GPL-3.0-or-later */
-#include <string.h>
-
 #include "figures/label.h"
 #include "view/overlay_parts.h"
 
 #define N_STATES 4
-#define GLYPH_FROM 10.0 /* diameter from which an outline carries its state's glyph, logical px */
-#define LABEL_FROM 26.0 /* diameter from which there is room for a number */
-#define AIM_FROM 14.0   /* diameter from which aim points are drawn */
-#define MAX_LABELS 150
+#define GLYPH_FROM 10.0   /* diameter from which an outline carries its state's glyph, logical px */
+#define CAUTION_FROM 7.0  /* diameter from which cautions are drawn */
+#define AIM_FROM 28.0     /* diameter from which the aim points of likely targets are drawn */
+#define LABEL_FROM 26.0   /* diameter from which there is room for a number */
+#define MAX_LABELS 120    /* a text costs as much as forty outlines */
+#define MAX_OUTLINE 256   /* points of an outline that are drawn */
+#define LEAST_STEP_PX 1.5 /* outline points nearer than this to the last are left out */
 
 static const AwState draw_order[N_STATES] = { AW_STATE_FOUND, AW_STATE_REJECTED, AW_STATE_PROPOSED, AW_STATE_ACCEPTED };
+
+/* What one redraw stamps; NULL where nothing is to be stamped. */
+typedef struct {
+  AwStamp *state[N_STATES], *selected[N_STATES];
+  AwStamp *aim, *caution;
+} Stamps;
 
 static const AwNucleus *nucleus_at(const AwPass *pass, guint i)
 {
@@ -22,145 +29,116 @@ static gboolean has_mark(const AwPass *pass, guint i, AwMark mark)
   return pass->scene->marks && (pass->scene->marks[i] & mark);
 }
 
-static AwInk ink_of(const AwPass *pass, guint i, const AwLook *look)
+/* States without a glyph get a ring where marks stand alone. */
+static Stamps make_stamps(const AwPass *pass, AwDetail detail)
 {
-  return has_mark(pass, i, AW_MARK_SELECTED) ? aw_ink_tour : look->ink;
-}
-
-/* Hairline outline; points nearer than 1.5 px to the last are left out, which the eye does not miss. */
-static void hairline(const AwPass *pass, const AwNucleus *nucleus, AwInk ink)
-{
-  if (nucleus->n_outline < 3)
-    return;
-  AwScreenPoint first = aw_pass_point(pass, nucleus->outline[0]), last = first;
-  for (gsize i = 1; i < nucleus->n_outline; i++) {
-    AwScreenPoint p = aw_pass_point(pass, nucleus->outline[i]);
-    if (fabs(p.sx - last.sx) + fabs(p.sy - last.sy) < 1.5)
-      continue;
-    aw_raster_line(pass->raster, last.sx, last.sy, p.sx, p.sy, ink);
-    last = p;
-  }
-  aw_raster_line(pass->raster, last.sx, last.sy, first.sx, first.sy, ink);
-}
-
-/* A glyph for each state and one more for its selected form; those without a glyph get a ring when marks stand alone.
- */
-static void make_stamps(const AwPass *pass, gboolean outlines, AwStamp *stamp[N_STATES][2])
-{
-  double r = outlines ? CLAMP(pass->size * 0.16, 1.5 * pass->u, 6 * pass->u)
-                      : CLAMP(pass->size * 0.5, 1.3 * pass->u, 3.5 * pass->u);
-  memset(stamp, 0, sizeof(AwStamp *[N_STATES][2]));
-  for (int s = 0; s < N_STATES; s++) {
+  double u = pass->u, size = pass->size;
+  gboolean alone = detail == AW_DETAIL_MARKS;
+  double r = alone ? CLAMP(size * 0.5, 1.3 * u, 3.5 * u) : CLAMP(size * 0.15, 1.5 * u, 6 * u);
+  Stamps stamps = { .aim = NULL };
+  for (int s = 0; s < N_STATES && (alone || size >= GLYPH_FROM * u); s++) {
     const AwLook *look = aw_look_of_state((AwState)s);
-    AwGlyph glyph = look->glyph == AW_GLYPH_NONE && !outlines ? AW_GLYPH_RING : look->glyph;
-    if (glyph == AW_GLYPH_NONE || (outlines && pass->size < GLYPH_FROM * pass->u))
+    AwGlyph glyph = look->glyph == AW_GLYPH_NONE && alone ? AW_GLYPH_RING : look->glyph;
+    if (glyph == AW_GLYPH_NONE)
       continue;
-    stamp[s][0] = aw_stamp_new(glyph, look->ink, r);
-    stamp[s][1] = aw_stamp_new(glyph, aw_ink_tour, r);
+    stamps.state[s] = aw_stamp_new(glyph, look->ink, r);
+    stamps.selected[s] = aw_stamp_new(glyph, alone ? aw_ink_tour : look->ink, r);
   }
+  if (pass->scene->aim && size >= AIM_FROM * u)
+    stamps.aim = aw_stamp_new(AW_GLYPH_PLUS, aw_ink_tour, 4.5 * u);
+  if (pass->scene->marks && size >= CAUTION_FROM * u)
+    stamps.caution = aw_stamp_new(AW_GLYPH_TRIANGLE, aw_ink_tour, 4 * u);
+  return stamps;
 }
 
-void aw_overlay_marks(const AwPass *pass, const GArray *item, gboolean outlines)
+static void free_stamps(Stamps *stamps)
 {
-  AwStamp *stamp[N_STATES][2];
-  make_stamps(pass, outlines, stamp);
   for (int s = 0; s < N_STATES; s++) {
-    AwState state = draw_order[s];
-    const AwLook *look = aw_look_of_state(state);
-    for (guint k = 0; k < item->len; k++) {
-      guint i = g_array_index(item, guint, k);
-      if (pass->scene->state[i] != state)
-        continue;
-      const AwStamp *mark = stamp[state][has_mark(pass, i, AW_MARK_SELECTED)];
-      AwScreenPoint at = aw_pass_point(pass, nucleus_at(pass, i)->centroid);
-      if (outlines)
-        hairline(pass, nucleus_at(pass, i), ink_of(pass, i, look));
-      if (mark)
-        aw_raster_stamp(pass->raster, mark, at.sx, at.sy);
-    }
+    aw_stamp_free(stamps->state[s]);
+    aw_stamp_free(stamps->selected[s]);
   }
-  for (int s = 0; s < N_STATES; s++) {
-    aw_stamp_free(stamp[s][0]);
-    aw_stamp_free(stamp[s][1]);
-  }
+  aw_stamp_free(stamps->aim);
+  aw_stamp_free(stamps->caution);
 }
 
-static void outline_path(const AwPass *pass, const AwNucleus *nucleus)
+/* The outline on the screen as x, y, x, y, ...; what the eye cannot tell apart is left out. Returns the points. */
+static gsize screen_outline(const AwPass *pass, const AwNucleus *nucleus, double xy[2 * MAX_OUTLINE])
 {
-  cairo_new_path(pass->cr);
-  for (gsize i = 0; i < nucleus->n_outline; i++) {
+  gsize n = 0, stride = nucleus->n_outline / MAX_OUTLINE + 1;
+  for (gsize i = 0; i < nucleus->n_outline; i += stride) {
     AwScreenPoint p = aw_pass_point(pass, nucleus->outline[i]);
-    cairo_line_to(pass->cr, p.sx, p.sy);
+    if (n > 0 && fabs(p.sx - xy[2 * n - 2]) + fabs(p.sy - xy[2 * n - 1]) < LEAST_STEP_PX)
+      continue;
+    xy[2 * n] = p.sx;
+    xy[2 * n + 1] = p.sy;
+    n++;
   }
-  cairo_close_path(pass->cr);
+  return n;
 }
 
-static void full_outline(const AwPass *pass, guint i, const AwLook *look)
+/* Full style: a light halo when selected, a dark seam, then the line of the state. Hairlines are one pixel wide. */
+static void draw_outline(const AwPass *pass, guint i, const AwLook *look, AwDetail detail)
 {
-  double u = pass->u * CLAMP(pass->size / (24 * pass->u), 0.6, 1.2);
-  outline_path(pass, nucleus_at(pass, i));
-  cairo_set_dash(pass->cr, NULL, 0, 0);
-  if (has_mark(pass, i, AW_MARK_SELECTED)) {
-    cairo_set_line_width(pass->cr, (look->width + 5) * u);
-    aw_style_set_ink(pass->cr, aw_ink_tour);
-    cairo_stroke_preserve(pass->cr);
+  double xy[2 * MAX_OUTLINE], u = pass->u * CLAMP(pass->size / (24 * pass->u), 0.55, 1.2), dash[4];
+  gsize n = screen_outline(pass, nucleus_at(pass, i), xy);
+  gboolean selected = has_mark(pass, i, AW_MARK_SELECTED), full = detail == AW_DETAIL_FULL;
+  AwStroke seam = { .ink = aw_ink_casing, .width = (look->width + 2) * u };
+  AwStroke halo = { .ink = aw_ink_tour, .width = (look->width + 5) * u };
+  AwStroke line = { .ink = !full && selected ? aw_ink_tour : look->ink, .width = full ? look->width * u : pass->u };
+  for (int k = 0; k < look->n_dash; k++)
+    dash[k] = look->dash[k] * u + (k % 2 ? -0.5 : 0.5) * look->width * u; /* as round ends would lengthen them */
+  if (full && look->n_dash) {
+    line.dash = dash;
+    line.n_dash = look->n_dash;
   }
-  cairo_set_line_width(pass->cr, (look->width + 1.6) * u);
-  aw_style_set_ink(pass->cr, aw_ink_casing);
-  cairo_stroke_preserve(pass->cr);
-  aw_style_set_line(pass->cr, look, u);
-  cairo_stroke(pass->cr);
+  if (full && selected)
+    aw_raster_outline(pass->raster, &halo, xy, n);
+  if (full)
+    aw_raster_outline(pass->raster, &seam, xy, n);
+  aw_raster_outline(pass->raster, &line, xy, n);
 }
 
-static void draw_aim(const AwPass *pass, AwScreenPoint at)
+static void draw_nucleus(const AwPass *pass, guint i, AwState state, AwDetail detail, const Stamps *stamps)
 {
-  double r = 4.5 * pass->u;
-  cairo_set_dash(pass->cr, NULL, 0, 0);
-  cairo_set_line_cap(pass->cr, CAIRO_LINE_CAP_BUTT);
-  for (int seam = 1; seam >= 0; seam--) {
-    cairo_set_line_width(pass->cr, (seam ? 3 : 1.4) * pass->u);
-    aw_style_set_ink(pass->cr, seam ? aw_ink_casing : aw_ink_tour);
-    cairo_move_to(pass->cr, at.sx - r, at.sy);
-    cairo_line_to(pass->cr, at.sx + r, at.sy);
-    cairo_move_to(pass->cr, at.sx, at.sy - r);
-    cairo_line_to(pass->cr, at.sx, at.sy + r);
-    cairo_stroke(pass->cr);
+  AwScreenPoint at = aw_pass_point(pass, nucleus_at(pass, i)->centroid);
+  const AwStamp *mark = has_mark(pass, i, AW_MARK_SELECTED) ? stamps->selected[state] : stamps->state[state];
+  if (detail != AW_DETAIL_MARKS)
+    draw_outline(pass, i, aw_look_of_state(state), detail);
+  if (mark)
+    aw_raster_stamp(pass->raster, mark, at.sx, at.sy);
+  if (stamps->aim && (state == AW_STATE_ACCEPTED || state == AW_STATE_PROPOSED)) {
+    AwScreenPoint aim = aw_pass_point(pass, pass->scene->aim[i]);
+    aw_raster_stamp(pass->raster, stamps->aim, aim.sx, aim.sy);
+  }
+  if (stamps->caution && has_mark(pass, i, AW_MARK_CAUTION)) {
+    double off = pass->size * 0.42 + 3 * pass->u;
+    aw_raster_stamp(pass->raster, stamps->caution, at.sx + off, at.sy - off);
   }
 }
 
-/* Number on a dark patch under the nucleus, so that it reads on any picture. */
-static void draw_number(const AwPass *pass, const AwNucleus *nucleus, AwScreenPoint at)
+void aw_overlay_nuclei(const AwPass *pass, const GArray *item, AwDetail detail)
 {
-  double u = pass->u;
-  g_autofree char *text = g_strdup_printf("%" G_GINT64_FORMAT, nucleus->id);
-  AwLabel label = { .size = 11 * u, .ink = aw_ink_tour, .align = AW_ALIGN_CENTRE };
-  AwPatchInk patch = { aw_ink_casing, 3 * u, 3 * u };
-  aw_label_draw_on(pass->cr, &label, &patch, text, at.sx, at.sy + pass->size * 0.6);
-}
-
-static void full_nucleus(const AwPass *pass, guint i, const AwLook *look, gboolean with_number)
-{
-  const AwNucleus *nucleus = nucleus_at(pass, i);
-  AwScreenPoint at = aw_pass_point(pass, nucleus->centroid);
-  if (nucleus->n_outline >= 3)
-    full_outline(pass, i, look);
-  if (pass->size >= GLYPH_FROM * pass->u) {
-    aw_style_set_ink(pass->cr, look->ink);
-    aw_style_draw_glyph(pass->cr, look->glyph, at.sx, at.sy, CLAMP(pass->size * 0.14, 2 * pass->u, 6 * pass->u));
-  }
-  if (pass->scene->aim && pass->size >= AIM_FROM * pass->u)
-    draw_aim(pass, aw_pass_point(pass, pass->scene->aim[i]));
-  if (with_number)
-    draw_number(pass, nucleus, at);
-}
-
-void aw_overlay_full(const AwPass *pass, const GArray *item)
-{
-  gboolean numbers = pass->scene->show_labels && pass->size >= LABEL_FROM * pass->u && item->len <= MAX_LABELS;
+  Stamps stamps = make_stamps(pass, detail);
   for (int s = 0; s < N_STATES; s++)
     for (guint k = 0; k < item->len; k++) {
       guint i = g_array_index(item, guint, k);
       if (pass->scene->state[i] == draw_order[s])
-        full_nucleus(pass, i, aw_look_of_state(draw_order[s]), numbers);
+        draw_nucleus(pass, i, draw_order[s], detail, &stamps);
     }
+  free_stamps(&stamps);
+}
+
+void aw_overlay_numbers(const AwPass *pass, const GArray *item)
+{
+  double u = pass->u;
+  AwLabel label = { .size = 11 * u, .ink = aw_ink_tour, .align = AW_ALIGN_CENTRE };
+  AwPatchInk patch = { aw_ink_casing, 3 * u, 3 * u };
+  if (pass->size < LABEL_FROM * u || item->len > MAX_LABELS)
+    return;
+  for (guint k = 0; k < item->len; k++) {
+    const AwNucleus *nucleus = nucleus_at(pass, g_array_index(item, guint, k));
+    AwScreenPoint at = aw_pass_point(pass, nucleus->centroid);
+    g_autofree char *text = g_strdup_printf("%" G_GINT64_FORMAT, nucleus->id);
+    aw_label_draw_on(pass->cr, &label, &patch, text, at.sx, at.sy + pass->size * 0.6);
+  }
 }

@@ -24,16 +24,16 @@ static inline AwScreenPoint aw_pass_point(const AwPass *pass, AwScanPoint q)
   return (AwScreenPoint){ pass->origin.sx + m->xx * dx + m->xy * dy, pass->origin.sy + m->yx * dx + m->yy * dy };
 }
 
-/* Hairlines and marks of the nuclei `item` (guint) on the raster. */
-void aw_overlay_marks(const AwPass *pass, const GArray *item, gboolean outlines);
+/* The nuclei `item` (guint) on the raster. */
+void aw_overlay_nuclei(const AwPass *pass, const GArray *item, AwDetail detail);
 
-/* The same in full detail through cairo. */
-void aw_overlay_full(const AwPass *pass, const GArray *item);
+/* Their numbers, through cairo. */
+void aw_overlay_numbers(const AwPass *pass, const GArray *item);
 
-/* The tour, under the nuclei: on the raster when it is long, else through cairo. */
+/* The way of the tour, on the raster, under the nuclei. */
 void aw_overlay_tour(const AwPass *pass);
 
-/* Above everything: direction of the tour, cautions, brackets round the current nucleus. */
-void aw_overlay_signs(const AwPass *pass, const GArray *item);
+/* Above everything, through cairo: direction and ends of the tour, brackets round the current nucleus. */
+void aw_overlay_signs(const AwPass *pass);
 
 #endif

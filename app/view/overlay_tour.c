@@ -1,9 +1,8 @@
 /* Aimwell - SPDX-License-Identifier: GPL-3.0-or-later */
 #include "view/overlay_parts.h"
 
-#define MAX_STROKED 200 /* legs that cairo strokes in one redraw */
+#define MAX_SEAMED 2000 /* legs in view that get a dark seam */
 #define MAX_ARROWS 80
-#define MAX_CAUTIONS 400
 
 static AwScreenPoint stop(const AwPass *pass, gsize i)
 {
@@ -26,40 +25,21 @@ static gsize count_legs(const AwPass *pass)
   return n;
 }
 
-static AwInk leg_ink(const AwPass *pass, gsize leg)
-{
-  AwInk ink = aw_ink_tour;
-  ink.a = leg + 1 < pass->scene->n_done ? 0.35 : 1;
-  return ink;
-}
-
-static void stroke_leg(const AwPass *pass, AwScreenPoint a, AwScreenPoint b, AwInk ink)
-{
-  cairo_move_to(pass->cr, a.sx, a.sy);
-  cairo_line_to(pass->cr, b.sx, b.sy);
-  cairo_set_line_width(pass->cr, 3 * pass->u);
-  aw_style_set_ink(pass->cr, aw_ink_casing);
-  cairo_stroke_preserve(pass->cr);
-  cairo_set_line_width(pass->cr, 1.4 * pass->u);
-  aw_style_set_ink(pass->cr, ink);
-  cairo_stroke(pass->cr);
-}
-
 void aw_overlay_tour(const AwPass *pass)
 {
-  if (!pass->scene->tour || pass->scene->n_tour < 2)
-    return;
-  gboolean stroked = count_legs(pass) <= MAX_STROKED;
-  cairo_set_dash(pass->cr, NULL, 0, 0);
-  cairo_set_line_cap(pass->cr, CAIRO_LINE_CAP_ROUND);
-  for (gsize i = 0; i + 1 < pass->scene->n_tour; i++) {
+  gsize n = pass->scene->tour ? pass->scene->n_tour : 0;
+  AwStroke seam = { .ink = aw_ink_casing, .width = 3 * pass->u }, line = { .width = 1.4 * pass->u };
+  gboolean crowded = n > MAX_SEAMED && count_legs(pass) > MAX_SEAMED;
+  for (gsize i = 0; i + 1 < n; i++) {
     AwScreenPoint a = stop(pass, i), b = stop(pass, i + 1);
     if (!in_view(pass, a, b))
       continue;
-    if (stroked)
-      stroke_leg(pass, a, b, leg_ink(pass, i));
-    else
-      aw_raster_line(pass->raster, a.sx, a.sy, b.sx, b.sy, leg_ink(pass, i));
+    line.ink = aw_ink_tour;
+    line.ink.a = i + 1 < pass->scene->n_done ? 0.35 : 1;
+    line.width = crowded ? pass->u : 1.4 * pass->u;
+    if (!crowded)
+      aw_raster_line(pass->raster, &seam, a.sx, a.sy, b.sx, b.sy);
+    aw_raster_line(pass->raster, &line, a.sx, a.sy, b.sx, b.sy);
   }
 }
 
@@ -113,37 +93,6 @@ static void draw_end(const AwPass *pass, AwScreenPoint at, gboolean start)
   cairo_stroke(pass->cr);
 }
 
-/* A small triangle at the upper right of a nucleus that asks for care. */
-static void draw_caution(const AwPass *pass, AwScreenPoint at)
-{
-  double r = 4.5 * pass->u, off = pass->size * 0.42 + 2 * pass->u, x = at.sx + off, y = at.sy - off;
-  cairo_new_path(pass->cr);
-  cairo_move_to(pass->cr, x, y - r);
-  cairo_line_to(pass->cr, x + r, y + r * 0.8);
-  cairo_line_to(pass->cr, x - r, y + r * 0.8);
-  cairo_close_path(pass->cr);
-  aw_style_set_ink(pass->cr, aw_ink_tour);
-  cairo_fill_preserve(pass->cr);
-  cairo_set_line_width(pass->cr, 1.5 * pass->u);
-  aw_style_set_ink(pass->cr, aw_ink_night);
-  cairo_stroke(pass->cr);
-}
-
-static void draw_cautions(const AwPass *pass, const GArray *item)
-{
-  if (!pass->scene->marks || pass->size < 8 * pass->u)
-    return;
-  guint n = 0;
-  for (guint k = 0; k < item->len && n < MAX_CAUTIONS; k++) {
-    guint i = g_array_index(item, guint, k);
-    const AwNucleus *nucleus = pass->scene->nuclei->pdata[i];
-    if (!(pass->scene->marks[i] & AW_MARK_CAUTION))
-      continue;
-    draw_caution(pass, aw_pass_point(pass, nucleus->centroid));
-    n++;
-  }
-}
-
 /* Four corners round the nucleus being decided, never smaller than can be seen from afar. */
 static void draw_brackets(const AwPass *pass)
 {
@@ -169,7 +118,7 @@ static void draw_brackets(const AwPass *pass)
   cairo_stroke(pass->cr);
 }
 
-void aw_overlay_signs(const AwPass *pass, const GArray *item)
+void aw_overlay_signs(const AwPass *pass)
 {
   const AwScene *scene = pass->scene;
   if (scene->tour && scene->n_tour > 0) {
@@ -178,7 +127,6 @@ void aw_overlay_signs(const AwPass *pass, const GArray *item)
       draw_end(pass, stop(pass, scene->n_tour - 1), FALSE);
     draw_end(pass, stop(pass, 0), TRUE);
   }
-  draw_cautions(pass, item);
   if (scene->current >= 0 && (guint)scene->current < scene->nuclei->len)
     draw_brackets(pass);
 }

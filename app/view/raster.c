@@ -77,6 +77,19 @@ static void over(guint32 *at, guint32 ink)
   *at = ink + scale_pixel(*at, 255 - (ink >> 24));
 }
 
+/* A dark disc behind the glyph; behind a plus, which often stands on another glyph, only a dark shape of it. */
+static void draw_seam(cairo_t *cr, AwGlyph glyph, double middle, double r)
+{
+  aw_style_set_ink(cr, aw_ink_casing);
+  if (glyph != AW_GLYPH_PLUS) {
+    cairo_arc(cr, middle, middle, r + SEAM, 0, 2 * G_PI);
+    cairo_fill(cr);
+    return;
+  }
+  for (int k = 0; k < 4; k++)
+    aw_style_draw_glyph(cr, glyph, middle + (k & 1 ? 0.7 : -0.7), middle + (k & 2 ? 0.7 : -0.7), r);
+}
+
 AwStamp *aw_stamp_new(AwGlyph glyph, AwInk ink, double r)
 {
   g_return_val_if_fail(r > 0 && r < 100, NULL);
@@ -85,9 +98,7 @@ AwStamp *aw_stamp_new(AwGlyph glyph, AwInk ink, double r)
   cairo_surface_t *surface = cairo_image_surface_create(CAIRO_FORMAT_ARGB32, stamp->side, stamp->side);
   cairo_t *cr = cairo_create(surface);
   double middle = stamp->side / 2.0;
-  aw_style_set_ink(cr, aw_ink_casing);
-  cairo_arc(cr, middle, middle, r + SEAM, 0, 2 * G_PI);
-  cairo_fill(cr);
+  draw_seam(cr, glyph, middle, r);
   aw_style_set_ink(cr, ink);
   aw_style_draw_glyph(cr, glyph, middle, middle, r);
   cairo_destroy(cr);
@@ -124,12 +135,12 @@ void aw_raster_stamp(AwRaster *raster, const AwStamp *stamp, double x, double y)
   }
 }
 
-/* Cuts the line to the layer and a rim of 2 px (Liang & Barsky 1984); FALSE when nothing is left. */
-static gboolean cut_line(const AwRaster *raster, double p[4])
+/* Cuts the line to the layer and a rim of `rim` px (Liang & Barsky 1984); FALSE when nothing is left. */
+static gboolean cut_line(const AwRaster *raster, double rim, double p[4])
 {
   double dx = p[2] - p[0], dy = p[3] - p[1], t0 = 0, t1 = 1;
   double run[4] = { -dx, dx, -dy, dy };
-  double room[4] = { p[0] + 2, raster->width + 2 - p[0], p[1] + 2, raster->height + 2 - p[1] };
+  double room[4] = { p[0] + rim, raster->width + rim - p[0], p[1] + rim, raster->height + rim - p[1] };
   if (!isfinite(dx) || !isfinite(dy))
     return FALSE;
   for (int i = 0; i < 4; i++) {
@@ -149,31 +160,109 @@ static gboolean cut_line(const AwRaster *raster, double p[4])
   return t0 <= t1;
 }
 
-static void dot(AwRaster *raster, int x, int y, guint32 ink, double cover)
+/* A line seen along its longer axis i: it runs through `at` + slope (i - from) across it, first <= i <= last. */
+typedef struct {
+  gboolean steep;
+  double from, at, slope;
+  double first, last;
+} Track;
+
+static Track track_of(const double p[4])
 {
-  if (x < 0 || y < 0 || x >= raster->width || y >= raster->height || cover <= 0)
-    return;
-  over(raster->pixels + (gsize)y * raster->stride + x, scale_pixel(ink, (guint32)(cover * 255 + 0.5)));
+  Track t = { .steep = fabs(p[3] - p[1]) > fabs(p[2] - p[0]) };
+  double to = t.steep ? p[3] : p[2], to_across = t.steep ? p[2] : p[3];
+  t.from = t.steep ? p[1] : p[0];
+  t.at = t.steep ? p[0] : p[1];
+  t.slope = to == t.from ? 0 : (to_across - t.at) / (to - t.from);
+  t.first = MIN(t.from, to);
+  t.last = MAX(t.from, to);
+  return t;
 }
 
-/* Wu 1991: step along the longer axis, share each step between the two nearest pixels. Pixel centres lie at + 0.5. */
-void aw_raster_line(AwRaster *raster, double x0, double y0, double x1, double y1, AwInk ink)
+/* One pixel of a track, when it lies on the layer. */
+static guint32 *pixel_on(AwRaster *raster, const Track *track, int i, int across)
 {
-  double p[4] = { x0 - 0.5, y0 - 0.5, x1 - 0.5, y1 - 0.5 };
-  if (!cut_line(raster, p))
-    return;
+  int x = track->steep ? across : i, y = track->steep ? i : across;
+  if (x < 0 || y < 0 || x >= raster->width || y >= raster->height)
+    return NULL;
+  return raster->pixels + (gsize)y * raster->stride + x;
+}
+
+/* A pixel is covered by how far its centre lies inside the line's edge, and by how much of its step the line runs
+ * through: Wu's hairline (1991) for any width. */
+static void cover_step(AwRaster *raster, const Track *track, int i, double half, guint32 ink)
+{
+  double share = MIN(track->last, i + 0.5) - MAX(track->first, i - 0.5);
+  double middle = track->at + (i - track->from) * track->slope;
+  for (int across = (int)ceil(middle - half - 1); across <= (int)floor(middle + half + 1); across++) {
+    double cover = CLAMP(half + 0.5 - fabs(across - middle), 0, 1) * share;
+    guint32 *pixel = pixel_on(raster, track, i, across);
+    if (pixel && cover > 0)
+      over(pixel, scale_pixel(ink, (guint32)(MIN(cover, 1) * 255 + 0.5)));
+  }
+}
+
+static guint32 premultiplied(AwInk ink)
+{
   guint32 a = (guint32)(ink.a * 255 + 0.5);
-  guint32 colour =
-      a << 24 | (guint32)(ink.r * a + 0.5) << 16 | (guint32)(ink.g * a + 0.5) << 8 | (guint32)(ink.b * a + 0.5);
-  gboolean steep = fabs(p[3] - p[1]) > fabs(p[2] - p[0]);
-  double from = steep ? p[1] : p[0], to = steep ? p[3] : p[2], at = steep ? p[0] : p[1];
-  double slope = to == from ? 0 : ((steep ? p[2] : p[3]) - at) / (to - from);
-  int first = (int)floor(MIN(from, to) + 0.5), last = (int)floor(MAX(from, to) + 0.5);
-  for (int i = first; i <= last; i++) {
-    double other = at + (i - from) * slope;
-    int low = (int)floor(other);
-    double share = other - low;
-    dot(raster, steep ? low : i, steep ? i : low, colour, 1 - share);
-    dot(raster, steep ? low + 1 : i, steep ? i : low + 1, colour, share);
+  return a << 24 | (guint32)(ink.r * a + 0.5) << 16 | (guint32)(ink.g * a + 0.5) << 8 | (guint32)(ink.b * a + 0.5);
+}
+
+void aw_raster_line(AwRaster *raster, const AwStroke *stroke, double x0, double y0, double x1, double y1)
+{
+  double p[4] = { x0 - 0.5, y0 - 0.5, x1 - 0.5, y1 - 0.5 }; /* pixel centres lie on whole numbers here */
+  if (!cut_line(raster, stroke->width + 2, p))
+    return;
+  Track track = track_of(p);
+  double half = MAX(stroke->width, 1) / 2 * sqrt(1 + track.slope * track.slope);
+  guint32 ink = premultiplied(stroke->ink);
+  for (int i = (int)floor(track.first + 0.5); i <= (int)floor(track.last + 0.5); i++)
+    cover_step(raster, &track, i, half, ink);
+}
+
+/* Draws the dashes of one side of an outline; *gone is the length behind it, which tells where in the pattern it is. */
+static void dashed_side(AwRaster *raster, const AwStroke *stroke, const double p[4], double *gone)
+{
+  double length = hypot(p[2] - p[0], p[3] - p[1]), period = 0, done = 0;
+  for (int i = 0; i < stroke->n_dash; i++)
+    period += stroke->dash[i];
+  if (!(period > 0.5) || !(length < 1e5))
+    return;
+  double at = fmod(*gone, period);
+  int k = 0;
+  for (; at >= stroke->dash[k] && k < stroke->n_dash - 1; k++)
+    at -= stroke->dash[k];
+  for (; done < length; k = (k + 1) % stroke->n_dash, at = 0) {
+    double end = MIN(length, done + stroke->dash[k] - at), a = done / length, b = end / length;
+    if (k % 2 == 0)
+      aw_raster_line(raster, stroke, p[0] + (p[2] - p[0]) * a, p[1] + (p[3] - p[1]) * a, p[0] + (p[2] - p[0]) * b,
+                     p[1] + (p[3] - p[1]) * b);
+    done = end;
+  }
+  *gone += length;
+}
+
+/* A side of a full outline, half a pixel longer at both ends: shares of one pixel laid over each other by two sides
+ * would leave a pale bead at every corner. */
+static void full_side(AwRaster *raster, const AwStroke *stroke, const double p[4])
+{
+  double length = hypot(p[2] - p[0], p[3] - p[1]), dx = 0, dy = 0;
+  if (length > 0) {
+    dx = (p[2] - p[0]) / length / 2;
+    dy = (p[3] - p[1]) / length / 2;
+  }
+  aw_raster_line(raster, stroke, p[0] - dx, p[1] - dy, p[2] + dx, p[3] + dy);
+}
+
+void aw_raster_outline(AwRaster *raster, const AwStroke *stroke, const double *xy, gsize n)
+{
+  double gone = 0;
+  for (gsize i = 0; i < n; i++) {
+    gsize j = i + 1 < n ? i + 1 : 0;
+    double p[4] = { xy[2 * i], xy[2 * i + 1], xy[2 * j], xy[2 * j + 1] };
+    if (stroke->dash)
+      dashed_side(raster, stroke, p, &gone);
+    else
+      full_side(raster, stroke, p);
   }
 }

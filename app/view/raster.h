@@ -34,7 +34,18 @@ G_DEFINE_AUTOPTR_CLEANUP_FUNC(AwStamp, aw_stamp_free)
 /* Puts the stamp's middle on the pixel that holds (x, y), device px; parts outside are cut off. */
 void aw_raster_stamp(AwRaster *raster, const AwStamp *stamp, double x, double y);
 
-/* A line one pixel wide with smooth edges. Points may lie anywhere; those not finite draw nothing. */
-void aw_raster_line(AwRaster *raster, double x0, double y0, double x1, double y1, AwInk ink);
+/* How a line is drawn. */
+typedef struct {
+  AwInk ink;
+  double width;       /* px, at least 1 */
+  const double *dash; /* on, off, ... px; NULL for a full line */
+  int n_dash;
+} AwStroke;
+
+/* A straight line with smooth edges and square ends. Points may lie anywhere; those not finite draw nothing. */
+void aw_raster_line(AwRaster *raster, const AwStroke *stroke, double x0, double y0, double x1, double y1);
+
+/* A closed line through n points x, y, x, y, ...; the dashes run on round the corners. */
+void aw_raster_outline(AwRaster *raster, const AwStroke *stroke, const double *xy, gsize n);
 
 #endif

@@ -155,7 +155,7 @@ static gint64 nearest(const FakeDish *dish, const gboolean *done, AwScanPoint at
   double least = INFINITY;
   for (guint i = 0; i < dish->nuclei->len; i++) {
     const AwNucleus *n = dish->nuclei->pdata[i];
-    double d = hypot(n->centroid.x_um - at.x_um, n->centroid.y_um - at.y_um);
+    double dx = n->centroid.x_um - at.x_um, dy = n->centroid.y_um - at.y_um, d = dx * dx + dy * dy;
     if (dish->state[i] == AW_STATE_ACCEPTED && !done[i] && d < least) {
       least = d;
       best = i;
