@@ -37,7 +37,8 @@ static gboolean gather(Giant *giant, int y0, int y1, GError **error)
   double side = block_um(giant), half = side / 2.0 - BLOCK_EDGE_UM, first = -0.5 * (giant->n_blocks - 1) * side;
   g_ptr_array_set_size(giant->near, 0);
   for (int i = 0; i < giant->n_blocks * giant->n_blocks; i++) {
-    AwScanPoint m = { first + (i % giant->n_blocks) * side, first + (i / giant->n_blocks) * side };
+    int row = i / giant->n_blocks, column = i % giant->n_blocks;
+    AwScanPoint m = { first + column * side, first + row * side };
     if (!is_needed(giant, m, y0, y1)) {
       g_clear_pointer(&giant->block[i], g_ptr_array_unref);
       continue;

@@ -117,7 +117,8 @@ gboolean sample_write_stress(const char *dir, int n_frames, int side_px, int nuc
     return FALSE;
   g_autofree AwRenderView *view = g_new(AwRenderView, (gsize)n_frames);
   for (int i = 0; i < n_frames; i++) {
-    AwScanPoint stage = { floor(10.0 * (i % columns) * step) / 10.0, floor(10.0 * (i / columns) * step) / 10.0 };
+    int row = i / columns, column = i % columns;
+    AwScanPoint stage = { floor(10.0 * column * step) / 10.0, floor(10.0 * row * step) / 10.0 };
     view[i] = (AwRenderView){ side_px, side_px, map, stage, (guint)i };
   }
   Stress stress = { dir, truths, sample_channel("nuclei")->camera, view };

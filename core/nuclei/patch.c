@@ -77,7 +77,7 @@ static void add_in_row(double *row, double xa, double xb, double h)
   }
   double slope = xb > xa ? h / (xb - xa) : 0.0;
   double x = xa, done = 0.0;
-  for (double border = floor(xa) + 1.0; border < xb; border += 1.0) {
+  for (int border = (int)floor(xa) + 1; border < xb; border++) {
     double piece = (border - x) * slope;
     add_piece(row, x, border, piece);
     done += piece;
@@ -99,7 +99,7 @@ static void add_edge(AwPatch *patch, double x0, double y0, double x1, double y1)
   if (y1 <= y0)
     return;
   double xa = x0;
-  for (double top = floor(y0); top < y1; top += 1.0) {
+  for (int top = (int)floor(y0); top < y1; top++) {
     double ya = MAX(y0, top), yb = MIN(y1, top + 1.0);
     double xb = x0 + (x1 - x0) * ((yb - y0) / (y1 - y0));
     add_in_row(patch->value + (gsize)top * width, xa, xb, sign * (yb - ya));
