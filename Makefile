@@ -140,8 +140,8 @@ lint: ## layers, sizes, header self-containment, clang-format, clang-tidy
 	@tests/tools/lint.py
 	@tests/tools/headers.sh "$(CC)" "-std=c11 -D_GNU_SOURCE $(WARN) -Icore -Iapp -Itests" "$$(pkg-config --cflags $(PKG_CORE) $(PKG_FIG) $(PKG_GTK))"
 	@clang-format --dry-run --Werror $$(git ls-files 'core/*.[ch]' 'app/*.[ch]' 'tests/*.[ch]' 'sampleimages/*.[ch]')
-	@git ls-files 'core/*.c' 'app/*.c' | xargs -P 2 -n 8 clang-tidy --quiet 2>/dev/null -- -std=c11 -D_GNU_SOURCE -Icore -Iapp \
-	  -DAW_VERSION='"$(VERSION)"' $$(pkg-config --cflags $(PKG_CORE) $(PKG_FIG) $(PKG_GTK)) && echo "clang-tidy: clean"
+	@git ls-files 'core/*.c' 'app/*.c' | xargs -P 2 -I FILE clang-tidy --quiet FILE -- -std=c11 -D_GNU_SOURCE -Icore -Iapp \
+	  -DAW_VERSION='"$(VERSION)"' $$(pkg-config --cflags $(PKG_CORE) $(PKG_FIG) $(PKG_GTK)) 2>/dev/null && echo "clang-tidy: clean"
 
 bench: $(BIN)/aimwell $(bench_bin) ## speed as ratios in one run
 	@for b in $(bench_bin); do echo "== $$(basename $$b)"; AIMWELL=$(abspath $(BIN)/aimwell) $$b || exit 1; done
