@@ -13,7 +13,7 @@
  * all seeds through the same functions in the unit tests. A new harness is its file, its corpus and one line in
  * FUZZ_HARNESSES.
  */
-#define FUZZ_HARNESSES FUZZ_HARNESS(image) FUZZ_HARNESS(record)
+#define FUZZ_HARNESSES FUZZ_HARNESS(csv) FUZZ_HARNESS(image) FUZZ_HARNESS(layout) FUZZ_HARNESS(record)
 
 #define FUZZ_HARNESS(name) void fuzz_##name(const uint8_t *bytes, size_t n);
 FUZZ_HARNESSES

@@ -4,8 +4,7 @@
 
 #include "base/csv.h"
 #include "base/text.h"
-
-int LLVMFuzzerTestOneInput(const guint8 *data, size_t size);
+#include "fuzz.h"
 
 static void append_line(GString *out, const AwCsv *csv, gint64 row, char separator)
 {
@@ -42,14 +41,14 @@ static void check_round_trip(const AwCsv *csv, char separator)
   compare(csv, back);
 }
 
-int LLVMFuzzerTestOneInput(const guint8 *data, size_t size)
+void fuzz_csv(const uint8_t *bytes, size_t n)
 {
   static const char separators[] = { ',', ';', '\t', ' ' };
-  if (size == 0)
-    return 0;
-  char separator = separators[data[0] % 4];
+  if (n == 0)
+    return;
+  char separator = separators[bytes[0] % 4];
   g_autoptr(GError) error = NULL;
-  g_autoptr(AwCsv) csv = aw_csv_parse((const char *)data + 1, size - 1, "fuzz", separator, &error);
+  g_autoptr(AwCsv) csv = aw_csv_parse((const char *)bytes + 1, n - 1, "fuzz", separator, &error);
   g_assert_true((csv == NULL) == (error != NULL));
   for (gsize row = 0; csv && row < aw_csv_n_rows(csv); row++)
     for (gsize i = 0; i < aw_csv_n_columns(csv); i++) {
@@ -60,5 +59,6 @@ int LLVMFuzzerTestOneInput(const guint8 *data, size_t size)
     }
   if (csv)
     check_round_trip(csv, separator);
-  return 0;
 }
+
+FUZZ_ENTRY(csv)
