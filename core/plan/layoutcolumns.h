@@ -58,4 +58,8 @@ double aw_column_position_um(const AwColumn *column, const AwTargetRow *row);
 AwTargetList *aw_target_list_parse(const AwLayout *layout, const char *bytes, gsize n_bytes, const char *name,
                                    const char *head_text, GError **error);
 
+/* AW_ERROR_VERIFY naming target and column when the list that was read back is not the plan to within rounding. */
+gboolean aw_target_list_compare(const AwLayout *layout, const AwTargetList *back, const char *plan_hash,
+                                const AwTargetRow *rows, gsize n, GError **error);
+
 #endif

@@ -1,6 +1,4 @@
 /* Aimwell - SPDX-License-Identifier: GPL-3.0-or-later */
-#include <float.h>
-#include <math.h>
 #include <string.h>
 
 #include "base/csv.h"
@@ -173,62 +171,14 @@ static gboolean append_rows(GString *out, const Plan *plan, GError **error)
   return TRUE;
 }
 
-static gboolean differs(const Plan *plan, const AwTargetRow *row, const char *what, GError **error)
-{
-  g_set_error(error, AW_ERROR, AW_ERROR_VERIFY,
-              "%s: target %" G_GINT64_FORMAT " was read back with another %s than planned; nothing was kept",
-              plan->path, row->target, what);
-  return FALSE;
-}
-
-/* Half a unit of the last written place, and what the arithmetic on doubles of that size cannot resolve. */
-static double tolerance_um(const AwColumn *column, double um)
-{
-  double size = fabs(um) + fabs(column->offset) * column->um_per_unit;
-  return 0.5 * pow(10, -column->decimals) * column->um_per_unit + 8 * DBL_EPSILON * size;
-}
-
-/* Compares one row; columns that the layout lacks read back as they are set in `back` and are left out. */
-static gboolean verify_row(const Plan *plan, const AwTargetRow *row, const AwTargetRow *back, GError **error)
-{
-  for (gsize i = 0; i < plan->layout->columns->len; i++) {
-    const AwColumn *column = aw_layout_column(plan->layout, i);
-    if (column->value > AW_COLUMN_SCAN_Y)
-      continue;
-    double um = aw_column_position_um(column, row);
-    if (!(fabs(aw_column_position_um(column, back) - um) <= tolerance_um(column, um)))
-      return differs(plan, row, column->heading, error);
-  }
-  if (back->target != row->target)
-    return differs(plan, row, "target number", error);
-  if (back->nucleus_id && back->nucleus_id != row->nucleus_id)
-    return differs(plan, row, "nucleus", error);
-  if (back->n_particles >= 0 && back->n_particles != row->n_particles)
-    return differs(plan, row, "particle number", error);
-  if (back->arm && strcmp(back->arm, row->arm))
-    return differs(plan, row, "arm", error);
-  return TRUE;
-}
-
 /* Reads the list back through the layout, from `bytes`, and compares it with the plan. */
 static gboolean verify(const Plan *plan, const char *bytes, gsize n_bytes, const char *beside_bytes, GError **error)
 {
   g_autoptr(GError) bad = NULL;
   g_autoptr(AwTargetList) list = aw_target_list_parse(plan->layout, bytes, n_bytes, plan->path, beside_bytes, &bad);
-  if (!list) {
+  if (!list)
     g_set_error(error, AW_ERROR, AW_ERROR_VERIFY, "the list cannot be read back and was not kept: %s", bad->message);
-    return FALSE;
-  }
-  if (list->n != plan->n || g_strcmp0(list->plan_hash, plan->head->plan_hash)) {
-    g_set_error(error, AW_ERROR, AW_ERROR_VERIFY,
-                "%s was read back with another number of targets or plan hash than planned; nothing was kept",
-                plan->path);
-    return FALSE;
-  }
-  for (gsize i = 0; i < plan->n; i++)
-    if (!verify_row(plan, &plan->rows[i], &list->rows[i], error))
-      return FALSE;
-  return TRUE;
+  return list && aw_target_list_compare(plan->layout, list, plan->head->plan_hash, plan->rows, plan->n, error);
 }
 
 /* Writes all of `text`; *back gets what then stands in the file, or a copy of the text where it cannot be read back. */

@@ -131,6 +131,21 @@ static void refused(void)
   finish();
 }
 
+/* Somebody makes a folder of that name while the file is being written. */
+static void name_taken_by_a_folder(void)
+{
+  setup();
+  GError *error = NULL;
+  g_autofree char *path = in_folder("list.csv");
+  AwOutput *out = aw_output_open(path, &error);
+  g_assert_cmpint(g_mkdir(path, 0700), ==, 0);
+  g_assert_false(aw_output_commit(out, &error));
+  aw_check_error(&error, AW_ERROR_IO, "cannot give its name to|list.csv");
+  aw_output_free(out);
+  g_assert_cmpint(aw_scratch_count(folder), ==, 1);
+  finish();
+}
+
 /* Root may write anywhere, so the case needs another user: a child process that gives its rights up. */
 static void read_only_folder(void)
 {
@@ -259,6 +274,10 @@ static void input_read(void)
   g_assert_cmpuint(n, ==, 0);
   g_assert_cmpstr(bytes, ==, "");
   g_clear_pointer(&bytes, g_free);
+  g_assert_false(aw_input_read("/proc/self/mem", 9, &bytes, &n, &error)); /* address 0 cannot be read: EIO */
+  aw_check_error(&error, AW_ERROR_IO, "cannot read /proc/self/mem");
+  g_assert_null(aw_input_sha256("/proc/self/mem", &error));
+  aw_check_error(&error, AW_ERROR_IO, "cannot read /proc/self/mem");
   g_assert_false(aw_input_read(folder, 9, &bytes, &n, &error));
   aw_check_error(&error, AW_ERROR_IO, folder);
   finish();
@@ -289,6 +308,7 @@ int main(int argc, char **argv)
   aw_check_add("/base/output/links_are_kept", links_are_kept);
   aw_check_add("/base/output/longest_name", longest_name);
   aw_check_add("/base/output/refused", refused);
+  aw_check_add("/base/output/name_taken_by_a_folder", name_taken_by_a_folder);
   aw_check_add("/base/output/read_only_folder", read_only_folder);
   aw_check_add("/base/output/full_device", full_device);
   aw_check_add("/base/output/file_size_limit", file_size_limit);

@@ -3,9 +3,12 @@
 #include <glib/gstdio.h>
 #include <math.h>
 #include <string.h>
+#include <sys/resource.h>
+#include <sys/wait.h>
 #include <unistd.h>
 
 #include "../support/check.h"
+#include "base/output.h"
 #include "plan/cautions.h"
 #include "plan/layoutcolumns.h"
 
@@ -304,6 +307,88 @@ static void head_cannot_break_out(void)
   finish();
 }
 
+#define EVERYTHING                                                                                                     \
+  "[layout]\nname=all\n[column.t]\nvalue=target\n[column.n]\nvalue=nucleus\n[column.x]\nvalue=x\ndecimals=2\n"         \
+  "[column.y]\nvalue=y\nunit=mm\nsign=-1\ndecimals=3\n[column.sx]\nvalue=scan_x\n[column.sy]\nvalue=scan_y\nunit="     \
+  "step\n"                                                                                                             \
+  "step-um=0.5\n[column.p]\nvalue=particles\n[column.arm]\nvalue=arm\n"
+
+/* Reads a list that is the plan but for `changed` in its second row. */
+static void compare(AwTargetRow changed, const char *fault)
+{
+  GError *error = NULL;
+  AwTargetRow back_rows[] = { rows[0], changed, rows[2] };
+  const AwTargetList back = { .rows = back_rows, .n = 3, .plan_hash = (char[]){ "abc" } };
+  g_autoptr(AwLayout) layout = layout_of(EVERYTHING);
+  gboolean same = aw_target_list_compare(layout, &back, "abc", rows, 3, &error);
+  g_assert_true(same == (fault == NULL));
+  if (fault)
+    aw_check_error(&error, AW_ERROR_VERIFY, fault);
+}
+
+static AwTargetRow moved(double x_um, double y_um, double scan_x_um, double scan_y_um)
+{
+  AwTargetRow row = rows[1];
+  row.at.bx_um += x_um;
+  row.at.by_um += y_um;
+  row.scan.x_um += scan_x_um;
+  row.scan.y_um += scan_y_um;
+  return row;
+}
+
+/* Half a unit of the last place: 0.005 um, 0.0005 mm, 0.0005 um, half a step of 0.5 um. */
+static void comparison_is_sharp(void)
+{
+  compare(moved(0.00499, -0.499, 0.000499, 0.2499), NULL);
+  compare(moved(-0.00499, 0.499, -0.000499, -0.2499), NULL);
+  compare(moved(0.00501, 0, 0, 0), "target 2 was read back with another x than planned; the list was not kept");
+  compare(moved(0, -0.501, 0, 0), "target 2 was read back with another y than planned");
+  compare(moved(0, 0, 0.000501, 0), "another sx than planned");
+  compare(moved(0, 0, 0, -0.2501), "another sy than planned");
+  compare(moved(NAN, 0, 0, 0), "another x than planned");
+  AwTargetRow row = rows[1];
+  row.target = 3;
+  compare(row, "target 2 was read back with another target number");
+  row = rows[1];
+  row.nucleus_id = 5;
+  compare(row, "another nucleus");
+  row = rows[1];
+  row.n_particles = 1;
+  compare(row, "another particle number");
+  row = rows[1];
+  row.arm = "irradiate";
+  compare(row, "another arm");
+}
+
+/* A disk that fills up: the old list stays, and nothing is left beside it. */
+static void disk_fills_up(void)
+{
+  setup();
+  g_autofree char *path = aw_scratch_write(folder, "list", "old"), *hash = NULL, *text = NULL;
+  AwTargetHead full = full_head(&hash);
+  static const char *const layouts[] = { "csv", "sampleimages/layouts/heron.layout" };
+  for (gsize i = 0; i < G_N_ELEMENTS(layouts); i++) {
+    g_autoptr(AwLayout) layout = layout_of(layouts[i]);
+    pid_t pid = fork();
+    if (pid == 0) {
+      GError *error = NULL;
+      const struct rlimit limit = { 100, 100 };
+      aw_output_prepare_process();
+      if (setrlimit(RLIMIT_FSIZE, &limit) != 0)
+        _exit(3);
+      gboolean ok = aw_target_list_write(layout, &full, rows, 3, path, NULL, &error);
+      _exit(!ok && error->code == AW_ERROR_IO && strstr(error->message, "write all of") ? 0 : 1);
+    }
+    int status = 0;
+    waitpid(pid, &status, 0);
+    g_assert_true(WIFEXITED(status) && WEXITSTATUS(status) == 0);
+  }
+  g_assert_true(g_file_get_contents(path, &text, NULL, NULL));
+  g_assert_cmpstr(text, ==, "old");
+  g_assert_cmpint(aw_scratch_count(folder), ==, 1);
+  finish();
+}
+
 static void full_disk_and_missing_folder(void)
 {
   setup();
@@ -350,7 +435,7 @@ static void old_list_survives_a_refusal(void)
   AwTargetHead full = full_head(&hash);
   full.plan_hash = "a\tb"; /* reads back with a blank: the comparison must see it */
   g_assert_false(aw_target_list_write(layout, &full, rows, 3, path, NULL, &error));
-  aw_check_error(&error, AW_ERROR_VERIFY, "read back with another number of targets or plan hash");
+  aw_check_error(&error, AW_ERROR_VERIFY, "read back with another number of targets or plan hash than planned");
   AwTargetRow odd[] = { rows[0], rows[1] };
   odd[1].target = 0;
   full.plan_hash = hash;
@@ -380,6 +465,8 @@ int main(int argc, char **argv)
   aw_check_add("/plan/targetlist/lists_of_another_kind", lists_of_another_kind);
   aw_check_add("/plan/targetlist/constant_text_is_compared", constant_text_is_compared);
   aw_check_add("/plan/targetlist/head_cannot_break_out", head_cannot_break_out);
+  aw_check_add("/plan/targetlist/comparison_is_sharp", comparison_is_sharp);
+  aw_check_add("/plan/targetlist/disk_fills_up", disk_fills_up);
   aw_check_add("/plan/targetlist/full_disk_and_missing_folder", full_disk_and_missing_folder);
   aw_check_add("/plan/targetlist/pipe_is_checked_in_memory", pipe_is_checked_in_memory);
   aw_check_add("/plan/targetlist/old_list_survives_a_refusal", old_list_survives_a_refusal);
