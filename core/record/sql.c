@@ -27,6 +27,8 @@ static AwErrorCode error_code(int sqlite_code)
 
 static const char *plain_words(sqlite3 *db)
 {
+  if (sqlite3_extended_errcode(db) == SQLITE_READONLY_ROLLBACK)
+    return "it was left half-written by a program that stopped; open it once where it can be written";
   switch (sqlite3_errcode(db) & 0xff) {
   case SQLITE_BUSY:
     return "another program kept it busy for too long";

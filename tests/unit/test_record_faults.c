@@ -43,6 +43,19 @@ static AwRecord *open_or_fail(const char *path, AwRecordMode mode)
   return record;
 }
 
+/* Runs `work` in a child and gives its wait status: 0 when all went well. */
+static int run_child(void (*work)(const char *), const char *path)
+{
+  pid_t child = fork();
+  if (child == 0) {
+    work(path);
+    _exit(0);
+  }
+  int status = 0;
+  g_assert_cmpint(waitpid(child, &status, 0), ==, child);
+  return status;
+}
+
 /* --- killed while writing --- */
 
 static gboolean one_action(AwRecord *record, gint64 n)
@@ -157,6 +170,36 @@ static void test_kill_creating(Place *place, gconstpointer ignored)
   g_assert_cmpuint(n_found, >, 8);
 }
 
+/* Stops in the middle of writing an action larger than the page cache: the file is half-written and the rollback
+ * journal stands beside it. */
+static void stop_half_way(const char *path)
+{
+  AwRecord *record = open_or_fail(path, AW_RECORD_WRITE);
+  g_autoptr(GPtrArray) nuclei = aw_test_nuclei(3000, 1, 3);
+  g_assert_true(aw_sql_exec(record, "PRAGMA cache_size = 4", NULL) && aw_record_begin(record, "ada", NULL) &&
+                aw_record_set_nuclei(record, nuclei, NULL));
+  _exit(0);
+}
+
+/* Whoever opens next, even for reading, brings back the last commit. */
+static void test_half_written(Place *place, gconstpointer ignored)
+{
+  (void)ignored;
+  GError *error = NULL;
+  g_autofree char *journal = g_strconcat(place->path, "-journal", NULL);
+  AwRecord *record = aw_test_dish_new(place->folder);
+  g_autofree char *before = aw_test_dish_dump(record);
+  aw_record_free(record);
+  g_assert_cmpint(run_child(stop_half_way, place->path), ==, 0);
+  g_assert_true(g_file_test(journal, G_FILE_TEST_EXISTS));
+  record = open_or_fail(place->path, AW_RECORD_READ);
+  g_autofree char *after = aw_test_dish_dump(record);
+  g_assert_cmpstr(before, ==, after);
+  g_assert_true(aw_record_check(record, &error));
+  aw_record_free(record);
+  g_assert_false(g_file_test(journal, G_FILE_TEST_EXISTS));
+}
+
 /* --- several at once --- */
 
 static void test_two_writers(Place *place, gconstpointer ignored)
@@ -215,18 +258,6 @@ static void test_stubborn_reader(Place *place, gconstpointer ignored)
   g_assert_cmpstr(name, ==, "dish");
   g_assert_true(aw_record_begin(writer, "ada", &error) && aw_record_set_fact(writer, "name", "new", &error) &&
                 aw_record_commit(writer, "rename", &error));
-}
-
-static int expect_success(void (*work)(const char *), const char *path)
-{
-  pid_t child = fork();
-  if (child == 0) {
-    work(path);
-    _exit(0);
-  }
-  int status = 0;
-  g_assert_cmpint(waitpid(child, &status, 0), ==, child);
-  return status;
 }
 
 static void write_pairs(const char *path)
@@ -312,7 +343,7 @@ static void test_read_only_folder(Place *place, gconstpointer ignored)
   aw_record_free(aw_test_dish_new(place->folder));
   give_away(place->path, 0644);
   give_away(place->folder, 0555);
-  g_assert_cmpint(expect_success(try_read_only_folder, place->path), ==, 0);
+  g_assert_cmpint(run_child(try_read_only_folder, place->path), ==, 0);
   g_assert_cmpint(chmod(place->folder, 0755), ==, 0);
 }
 
@@ -331,8 +362,30 @@ static void test_read_only_file(Place *place, gconstpointer ignored)
   aw_record_free(aw_test_dish_new(place->folder));
   give_away(place->path, 0444);
   give_away(place->folder, 0755);
-  g_assert_cmpint(expect_success(try_read_only_file, place->path), ==, 0);
+  g_assert_cmpint(run_child(try_read_only_file, place->path), ==, 0);
   g_assert_cmpint(aw_scratch_count(place->folder), ==, 1);
+}
+
+static void try_half_written(const char *path)
+{
+  GError *error = NULL;
+  become_ordinary();
+  g_assert_null(aw_record_open(path, AW_RECORD_READ, &error));
+  aw_check_error(&error, AW_ERROR_IO, "dish.dish|was left half-written|where it can be written");
+}
+
+/* Who may not write cannot bring back the last commit either, and is told so. */
+static void test_half_written_read_only(Place *place, gconstpointer ignored)
+{
+  (void)ignored;
+  aw_record_free(aw_test_dish_new(place->folder));
+  g_assert_cmpint(run_child(stop_half_way, place->path), ==, 0);
+  g_autofree char *journal = g_strconcat(place->path, "-journal", NULL);
+  give_away(place->path, 0444);
+  give_away(journal, 0444);
+  give_away(place->folder, 0555);
+  g_assert_cmpint(run_child(try_half_written, place->path), ==, 0);
+  g_assert_cmpint(chmod(place->folder, 0755), ==, 0);
 }
 
 static void try_writing(const char *path)
@@ -352,7 +405,7 @@ static void test_stale_lock_of_another(Place *place, gconstpointer ignored)
   g_assert_cmpint(chmod(lock, 0444), ==, 0);
   give_away(place->path, 0644);
   give_away(place->folder, 0755);
-  g_assert_cmpint(expect_success(try_writing, place->path), ==, 0);
+  g_assert_cmpint(run_child(try_writing, place->path), ==, 0);
 }
 
 /* --- no room --- */
@@ -388,7 +441,7 @@ static void test_file_size_limit(Place *place, gconstpointer ignored)
   (void)ignored;
   GError *error = NULL;
   aw_record_free(aw_test_dish_new(place->folder));
-  g_assert_cmpint(expect_success(overfill_limited, place->path), ==, 0);
+  g_assert_cmpint(run_child(overfill_limited, place->path), ==, 0);
   g_autoptr(AwRecord) record = open_or_fail(place->path, AW_RECORD_READ);
   g_assert_true(aw_record_check(record, &error));
 }
@@ -424,7 +477,7 @@ static void create_limited(const char *path)
 static void test_no_room_to_create(Place *place, gconstpointer ignored)
 {
   (void)ignored;
-  g_assert_cmpint(expect_success(create_limited, place->path), ==, 0);
+  g_assert_cmpint(run_child(create_limited, place->path), ==, 0);
   g_assert_cmpint(aw_scratch_count(place->folder), ==, 0);
 }
 
@@ -434,6 +487,8 @@ int main(int argc, char **argv)
 #define ADD(name, fn) g_test_add("/record/faults/" name, Place, NULL, set_up, fn, tear_down)
   ADD("kill", test_kill);
   ADD("kill-creating", test_kill_creating);
+  ADD("half-written", test_half_written);
+  ADD("half-written-read-only", test_half_written_read_only);
   ADD("two-writers", test_two_writers);
   ADD("two-creators", test_two_creators);
   ADD("reader-sees-last-commit", test_reader_sees_last_commit);
