@@ -2,6 +2,7 @@
 #include "image/overview.h"
 
 #include <gsl/gsl_statistics_float.h>
+#include <math.h>
 #include <string.h>
 
 #include "base/error.h"
@@ -107,7 +108,7 @@ static guint8 shade(double value, double low, double high)
 {
   if (!(value > low))
     return 0;
-  return value >= high ? 255 : (guint8)(255 * (value - low) / (high - low) + 0.5);
+  return value >= high ? 255 : (guint8)lround(255 * (value - low) / (high - low));
 }
 
 GBytes *aw_image_overview(const AwImage *image, int max_side_px, double low, double high, GError **error)

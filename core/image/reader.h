@@ -44,8 +44,9 @@ int aw_image_reader_n_channels(const AwImageReader *reader);
 
 /**
  * Reads the pixels of `rect`, which must lie inside the plane; memory is bounded by the rectangle and one strip or tile
- * of at most 128 MiB (a longer strip is read by rows). full_scale of the image is the info's, or that of the file's
- * pixel form where pixels exceed a smaller declared one. A float that is not finite is AW_ERROR_FORMAT.
+ * of at most 128 MiB (a longer strip is read by rows, its compressed bytes then limited to 512 MiB). full_scale of the
+ * image is the info's, or that of the file's pixel form where pixels exceed a smaller declared one. A float that is not
+ * finite is AW_ERROR_FORMAT.
  */
 AwImage *aw_image_reader_read(AwImageReader *reader, AwRect rect, GError **error);
 

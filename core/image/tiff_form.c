@@ -176,7 +176,7 @@ static gboolean check_claim(const AwTiffFile *file, const AwTiffForm *form, GErr
 {
   gint64 planes = form->is_separate ? form->n_samples : 1;
   gint64 bytes = (gint64)aw_pixels_row_bytes(&form->pixel, form->width_px) * form->height_px * planes;
-  if (bytes / most_expansion(tag16(file, TIFFTAG_COMPRESSION, COMPRESSION_NONE)) <= file->n_bytes)
+  if (bytes <= most_expansion(tag16(file, TIFFTAG_COMPRESSION, COMPRESSION_NONE)) * file->n_bytes)
     return TRUE;
   return aw_tiff_fail(file, AW_ERROR_FORMAT, error,
                       "is cut off or damaged: it claims %d x %d px, %" G_GINT64_FORMAT
@@ -229,7 +229,7 @@ static gboolean check_data(const AwTiffFile *file, const AwTiffForm *form, GErro
                           "is cut off: %s %u of %u takes %" G_GUINT64_FORMAT " bytes from byte %" G_GUINT64_FORMAT
                           ", the file has %" G_GINT64_FORMAT,
                           kind, i, n, stored, at, file->n_bytes);
-    if (decoded / expansion > (gint64)stored)
+    if (decoded > expansion * (gint64)stored)
       return aw_tiff_fail(file, AW_ERROR_FORMAT, error,
                           "is damaged: %s %u of %u claims %" G_GINT64_FORMAT " bytes of pixels in %" G_GUINT64_FORMAT
                           " bytes of the file",

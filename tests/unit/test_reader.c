@@ -102,6 +102,19 @@ static void twelve_packed(void)
   check_load(ten, -1, (double[]){ 1023, 1 }, NULL, 1023);
 }
 
+static void part_of_packed(void)
+{
+  char *folder = aw_scratch_new();
+  g_autoptr(TiffBytes) t = tiff_bytes_new(FALSE);
+  tiff_bytes_grey(t, 3, 2, 12, "\xab\xc1\x23\xff\xf0\x00\x10\x02\x7f\xe0", 10);
+  tiff_bytes_end_page(t);
+  g_autofree char *path = tiff_bytes_save(t, folder, "a.tif", 0);
+  g_autoptr(AwImageReader) reader = aw_image_reader_open(path, 0, -1, NULL);
+  g_autoptr(AwImage) part = aw_image_reader_read(reader, (AwRect){ 1, 0, 3, 2 }, NULL);
+  check_values(part, (double[]){ 0x123, 0xfff, 2, 0x7fe });
+  aw_scratch_remove(folder);
+}
+
 static void floats(void)
 {
   const float values[] = { -2.75f, 1e6f, 0, 0.1f };
@@ -216,7 +229,7 @@ static void pages(void)
   aw_scratch_remove(folder);
 }
 
-/* Every rectangle of a 7 x 9 picture, in strips of 2 rows and in tiles of 16 x 16 with unused rims. */
+/* Every rectangle of a 7 x 9 picture whose pixels count from 0. */
 static void check_rectangles(AwImageReader *reader)
 {
   for (int y0 = 0; y0 < 9; y0++)
@@ -230,22 +243,34 @@ static void check_rectangles(AwImageReader *reader)
         }
 }
 
-static void rectangles_of_strips(void)
+/* Strips of two rows, the last of one, in the order given: strip i begins at byte 8 + 14 order[i]. */
+static void check_strips(const guint32 *order)
 {
   char *folder = aw_scratch_new();
-  guint8 pixels[63];
-  for (int i = 0; i < 63; i++)
-    pixels[i] = (guint8)i;
+  guint8 pixels[70] = { 0 };
+  guint32 at[5], n_bytes[5];
+  for (guint32 i = 0; i < 5; i++) {
+    at[i] = 8 + 14 * order[i];
+    n_bytes[i] = i < 4 ? 14 : 7;
+    for (guint32 k = 0; k < n_bytes[i]; k++)
+      pixels[14 * order[i] + k] = (guint8)(14 * i + k);
+  }
   g_autoptr(TiffBytes) t = tiff_bytes_new(FALSE);
-  tiff_bytes_grey(t, 7, 9, 8, pixels, 63);
+  tiff_bytes_grey(t, 7, 9, 8, pixels, sizeof pixels);
   tiff_bytes_set(t, 278, TIFF_U32, 2);
-  tiff_bytes_set_list(t, 273, TIFF_U32, (guint32[]){ 8, 22, 36, 50, 64 }, 5);
-  tiff_bytes_set_list(t, 279, TIFF_U32, (guint32[]){ 14, 14, 14, 14, 7 }, 5);
+  tiff_bytes_set_list(t, 273, TIFF_U32, at, 5);
+  tiff_bytes_set_list(t, 279, TIFF_U32, n_bytes, 5);
   tiff_bytes_end_page(t);
   g_autofree char *path = tiff_bytes_save(t, folder, "a.tif", 0);
   g_autoptr(AwImageReader) reader = aw_image_reader_open(path, 0, -1, NULL);
   check_rectangles(reader);
   aw_scratch_remove(folder);
+}
+
+static void rectangles_of_strips(void)
+{
+  check_strips((guint32[]){ 0, 1, 2, 3, 4 }); /* in one piece */
+  check_strips((guint32[]){ 3, 1, 4, 0, 2 });
 }
 
 static void rectangles_of_tiles(void)
@@ -300,6 +325,7 @@ int main(int argc, char **argv)
   g_test_add_func("/image/reader/white-is-zero", white_is_zero);
   g_test_add_func("/image/reader/twelve-in-sixteen", twelve_in_sixteen);
   g_test_add_func("/image/reader/twelve-packed", twelve_packed);
+  g_test_add_func("/image/reader/part-of-packed", part_of_packed);
   g_test_add_func("/image/reader/floats", floats);
   g_test_add_func("/image/reader/grey-in-rgb", grey_in_rgb);
   g_test_add_func("/image/reader/chosen-channel", chosen_channel);
