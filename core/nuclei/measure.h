@@ -37,7 +37,8 @@ GPtrArray *aw_measure_nuclei(const AwImage *image, const AwLabels *labels, const
 GPtrArray *aw_measure_masks(const AwImage *image, const AwLabels *labels, const AwSegmentInfo *info,
                             double saturation_level, GError **error);
 
-/* Turns a nucleus of aw_measure_masks into frame px and scan um, and sets its border flag. To be called once. */
+/* Turns a nucleus of aw_measure_masks into frame px and scan um, and sets its border flag. Once a nucleus,
+ * but a placement with the loose map (which only adds the offset) may come before. */
 void aw_nucleus_place(AwNucleus *nucleus, const AwPlacement *placement);
 
 /**
