@@ -52,7 +52,7 @@ gboolean aw_text_to_double(const char *text, const char *where, double *value, G
   }
   g_autofree char *pointed = g_strdelimit(g_strdup(bare), ",", '.');
   double ignored = 0;
-  if (strcmp(pointed, bare) && parse_double(pointed, &ignored))
+  if (strcmp(pointed, bare) != 0 && parse_double(pointed, &ignored))
     return fail(error, AW_ERROR_FORMAT, where, bare, "has a decimal comma; write a decimal point");
   return fail(error, AW_ERROR_FORMAT, where, bare, "is not a finite number");
 }

@@ -30,7 +30,7 @@ static gboolean find_other_unit(const AwCsv *csv, const char *wanted, GError **e
 {
   for (gsize i = 0; i < aw_csv_n_columns(csv); i++) {
     const char *heading = aw_csv_heading(csv, i);
-    if (strncmp(heading, wanted, strlen("stage_x")))
+    if (strncmp(heading, wanted, strlen("stage_x")) != 0)
       continue;
     g_set_error(error, AW_ERROR, AW_ERROR_NOT_FOUND,
                 "%s has no column '%s' but '%s'; convert its values to um and rename it", aw_csv_name(csv), wanted,

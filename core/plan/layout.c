@@ -134,7 +134,7 @@ static gboolean read_unit(const Source *from, const char *group, AwColumn *colum
 {
   column->unit = aw_keyfile_text(from->keys, group, "unit", "um");
   gsize i = 0;
-  while (i < G_N_ELEMENTS(units) && strcmp(column->unit, units[i].unit))
+  while (i < G_N_ELEMENTS(units) && strcmp(column->unit, units[i].unit) != 0)
     i++;
   if (i == G_N_ELEMENTS(units)) {
     g_set_error(error, AW_ERROR, AW_ERROR_FORMAT, "%s, group [%s], key unit: '%s' is none of um, mm, nm, m, step",

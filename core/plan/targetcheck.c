@@ -46,7 +46,7 @@ static gboolean compare_row(const AwLayout *layout, const AwTargetRow *row, cons
     return differs(row, "nucleus", error);
   if (back->n_particles >= 0 && back->n_particles != row->n_particles)
     return differs(row, "particle number", error);
-  if (back->arm && strcmp(back->arm, row->arm))
+  if (back->arm && strcmp(back->arm, row->arm) != 0)
     return differs(row, "arm", error);
   return TRUE;
 }

@@ -26,7 +26,7 @@ void aw_target_list_free(AwTargetList *list)
 static void take_head_line(const char *line, const char *key, char **value)
 {
   gsize n = strlen(key);
-  if (strncmp(line, key, n) || line[n] != ':')
+  if (strncmp(line, key, n) != 0 || line[n] != ':')
     return;
   const char *rest = line + n + 1 + (line[n + 1] == ' ');
   char *all = *value ? g_strconcat(*value, "\n", rest, NULL) : g_strdup(rest);
@@ -65,7 +65,7 @@ static gboolean check_headings(const AwLayout *layout, const AwCsv *csv, GError 
     return FALSE;
   }
   for (gsize i = 0; i < layout->columns->len; i++)
-    if (strcmp(aw_csv_heading(csv, i), aw_layout_column(layout, i)->heading)) {
+    if (strcmp(aw_csv_heading(csv, i), aw_layout_column(layout, i)->heading) != 0) {
       g_set_error(error, AW_ERROR, AW_ERROR_FORMAT,
                   "%s, column %" G_GSIZE_FORMAT " is called '%s' where layout %s has '%s'", aw_csv_name(csv), i + 1,
                   aw_csv_heading(csv, i), layout->name, aw_layout_column(layout, i)->heading);
