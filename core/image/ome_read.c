@@ -273,7 +273,7 @@ static gboolean refuse_binary_only(const Reading *r, const Element *e, GError **
 static gboolean start(Reading *r, const Element *e, GError **error)
 {
   const char *at = r->path->str;
-  if (strcmp(at, "OME") == 0)
+  if (strcmp(at, "OME") == 0 && !r->ome->uuid)
     r->ome->uuid = g_strdup(attribute(e, "UUID"));
   else if (strcmp(at, "OME/BinaryOnly") == 0)
     return refuse_binary_only(r, e, error);
