@@ -3,6 +3,7 @@
 #include <stdlib.h>
 
 #include "base/error.h"
+#include "base/limits.h"
 #include "base/output.h"
 #include "base/pool.h"
 #include "image/reader.h"
@@ -119,9 +120,12 @@ static gboolean run(const Options *o, GError **error)
     g_set_error(error, AW_ERROR, AW_ERROR_FORMAT, "name one folder (with --bigtiff: one file)");
     return FALSE;
   }
-  if (o->side < 64 || o->side > 8192 || o->per_frame < 0 || o->n_stress < 0 || o->bigtiff_side < 0) {
-    g_set_error(error, AW_ERROR, AW_ERROR_RANGE, "the side is %d px (64 to 8192), with %d nuclei per frame (0 or more)",
-                o->side, o->per_frame);
+  if (o->side < 64 || o->side > 8192 || o->bigtiff_side < 0 || o->bigtiff_side > AW_MAX_SIDE_PX || o->n_stress < 0 ||
+      o->n_stress > AW_MAX_FRAMES || o->per_frame < 0 || o->per_frame > 100000) {
+    g_set_error(error, AW_ERROR, AW_ERROR_RANGE,
+                "out of range: --side 64 to 8192 px, --bigtiff up to %d px, --stress up to %d frames, "
+                "--nuclei-per-frame up to 100000",
+                AW_MAX_SIDE_PX, AW_MAX_FRAMES);
     return FALSE;
   }
   if (o->bigtiff_side)

@@ -132,6 +132,42 @@ def flags(images, truths, views):
     ok(sum(t['defocused'] == '1' for t in nuclei) >= 20, 'sample: a defocused place')
 
 
+def large_scans():
+    """The large scans, small: plain TIFF and tiled BigTIFF as tifffile reads them, and the same on any threads."""
+    with tempfile.TemporaryDirectory() as d:
+        one, two = os.path.join(d, 'one'), os.path.join(d, 'two')
+        size = ['--side', '300', '--nuclei-per-frame', '25']
+        runs = [generate('--stress', '3', *size, '--threads', n, where) for n, where in (('1', one), ('3', two))]
+        ok(not any(r.returncode for r in runs), 'stress: written')
+        frames = [[tifffile.imread(os.path.join(at, f'frame-00{k}.tif')) for k in (1, 2, 3)] for at in (one, two)]
+        ok(all(a.shape == (300, 300) and a.dtype == np.uint16 and 400 < np.percentile(a, 99) <= 4095
+               for a in frames[0]), 'stress: plain frames of the size asked for, with nuclei in them')
+        ok(all((a == b).all() for a, b in zip(*frames)), 'stress: the same on one thread and three')
+        truth = truth_score.read(os.path.join(one, 'truth.csv'))
+        scan = truth_score.read(os.path.join(one, 'scan.csv'))
+        ok(len(scan) == 3 and 75 <= sum(t['kind'] != 'debris' for t in truth) <= 200, 'stress: its tables')
+        big = [os.path.join(d, n) for n in ('big1.tif', 'big2.tif')]
+        for path, threads in zip(big, ('1', '2')):
+            generate('--bigtiff', '700', '--nuclei-per-frame', '900', '--threads', threads, path)
+        with tifffile.TiffFile(big[0]) as tiff:
+            page, pixels = tiff.pages[0], tiff.asarray()
+            ok(tiff.is_bigtiff and page.is_tiled and page.compression == 1 and pixels.shape == (700, 700) and
+               pixels[690:, 690:].min() > 90, 'bigtiff: tiled, plain, whole to its last corner')
+            ok((tifffile.imread(big[1]) == pixels).all(), 'bigtiff: the same on one thread and two')
+
+
+def refusals():
+    with tempfile.TemporaryDirectory() as d:
+        cases = [(['--bigtiff', '300', os.path.join(d, 'none', 'x.tif')], 'none'),
+                 (['--bigtiff', '300', '/dev/full'], 'No space'),
+                 (['--stress', '1', '--side', '128', '--nuclei-per-frame', '500', d], 'found room'),
+                 (['--stress', '1', '--side', '9', d], '--side 64 to 8192'),
+                 (['--stress', '1', os.path.join(os.path.abspath(__file__), 'x')], 'test_sample.py'),
+                 ([], 'one folder')]
+        runs = [(generate(*words), want) for words, want in cases]
+        ok(all(r.returncode == 1 and want in r.stderr for r, want in runs), 'generator: refusals name what is wrong')
+
+
 def scorer(truths, views):
     """The scorer itself: the truth scores perfectly; a mirrored, doubled or shortened one does not."""
     rows = [{'x_um': t['x_um'], 'y_um': t['y_um']} for t in truths.values()]
@@ -157,6 +193,8 @@ def main():
     pixels_agree(images, truths, views)
     flags(images, truths, views)
     scorer(truths, views)
+    large_scans()
+    refusals()
     print(f'1..{len(results)}')
     sys.exit(0 if all(results) else 1)
 
