@@ -1,7 +1,6 @@
 /* Aimwell - SPDX-License-Identifier: GPL-3.0-or-later */
-#include <math.h>
-
 #include "base/error.h"
+#include "base/text.h"
 #include "record/private.h"
 
 const char *aw_state_name(AwState state)
@@ -64,17 +63,26 @@ GArray *aw_record_decisions(AwRecord *record, GError **error)
   return row == 0 ? g_steal_pointer(&decisions) : NULL;
 }
 
+static gboolean gate_is_open(const AwGateRow *gate, GError **error)
+{
+  if (gate->min <= gate->max)
+    return TRUE;
+  g_autofree char *min = aw_text_from_double_exact(gate->min);
+  g_autofree char *max = aw_text_from_double_exact(gate->max);
+  g_set_error(error, AW_ERROR, AW_ERROR_RANGE,
+              "the gate on %s lets nothing in: its lower limit %s is above the upper %s", gate->feature->stem, min,
+              max);
+  return FALSE;
+}
+
 gboolean aw_record_set_gates(AwRecord *record, const AwGateRow *gates, gsize n, GError **error)
 {
   g_return_val_if_fail(record->in_action, FALSE);
   if (!aw_sql_exec(record, "DELETE FROM gate", error))
     return FALSE;
   for (gsize i = 0; i < n; i++) {
-    if (!(gates[i].min <= gates[i].max)) {
-      g_set_error(error, AW_ERROR, AW_ERROR_RANGE, "the gate on %s is empty: its lower limit %g is above the upper %g",
-                  gates[i].feature->stem, gates[i].min, gates[i].max);
+    if (!gate_is_open(&gates[i], error))
       return FALSE;
-    }
     sqlite3_stmt *put = aw_sql_prepare(record, "INSERT INTO gate VALUES(?, ?, ?, ?)", error);
     if (!put)
       return FALSE;

@@ -12,6 +12,7 @@
  *
  * One user action is one transaction: aw_record_begin ... aw_record_commit, which also appends to the journal and
  * keeps the action's changeset for undo. A record opened for writing holds flock (NAME.dish.lock) until it is freed.
+ * An AwRecord is used by one thread at a time. docs/formats-record.md describes the file.
  */
 typedef struct AwRecord AwRecord;
 

@@ -156,8 +156,7 @@ GByteArray *aw_shape_pack_outline(const AwScanPoint *points, gsize n_points, GEr
   gint64 x = 0, y = 0;
   for (gsize i = 0; i < n_points; i++) {
     if (!point_is_sane(points[i])) {
-      g_set_error(error, AW_ERROR, AW_ERROR_RANGE, "point %" G_GSIZE_FORMAT " of the outline is beyond %g um", i,
-                  MAX_OUTLINE_UM);
+      g_set_error(error, AW_ERROR, AW_ERROR_RANGE, "point %" G_GSIZE_FORMAT " of the outline is beyond 1e9 um", i);
       return NULL;
     }
     put_signed(out, to_steps(points[i].x_um) - x);

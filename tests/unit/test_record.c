@@ -235,6 +235,28 @@ static void test_facts(Place *place, gconstpointer ignored)
   aw_check_error(&error, AW_ERROR_FORMAT, "fact name");
 }
 
+/* Numbers are kept with a point wherever the user lives. */
+static void test_numbers(void)
+{
+  GError *error = NULL;
+  double value = 0;
+  char *folder = aw_scratch_new();
+  AwRecord *record = aw_test_dish_new(folder);
+  const AwGateRow gate = { aw_feature_find("area", NULL), 0.5, 1234.25 };
+  g_assert_true(aw_record_begin(record, "ada", &error) && aw_record_set_fact_double(record, "x", 1234.5, &error) &&
+                aw_record_set_gates(record, &gate, 1, &error) && aw_record_commit(record, "numbers", &error));
+  g_autofree char *text = aw_record_fact(record, "x", &error);
+  g_autofree char *a = aw_record_fact(record, "pixel_map.xx_um_per_px", &error);
+  g_autoptr(GArray) gates = aw_record_gates(record, &error);
+  g_assert_cmpstr(text, ==, "1234.5");
+  g_assert_cmpstr(a, ==, "0.65");
+  g_assert_true(aw_record_fact_double(record, "x", 0, &value, &error));
+  g_assert_cmpfloat(value, ==, 1234.5);
+  g_assert_cmpfloat(g_array_index(gates, AwGateRow, 0).max, ==, 1234.25);
+  aw_record_free(record);
+  aw_scratch_remove(folder);
+}
+
 static void test_no_pixel_map(Place *place, gconstpointer ignored)
 {
   (void)ignored;
@@ -391,6 +413,7 @@ int main(int argc, char **argv)
   ADD("damaged", test_damaged);
   ADD("damaged-header", test_damaged_header);
   ADD("foreign-keys-checked", test_foreign_keys_checked);
+  aw_check_add("/record/record/numbers", test_numbers);
   g_test_add_func("/record/record/share-names", test_share_names);
   return g_test_run();
 }
