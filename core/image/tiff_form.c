@@ -215,8 +215,6 @@ static gboolean check_data(const AwTiffFile *file, const AwTiffForm *form, GErro
   gint64 expansion = most_expansion(tag16(file, TIFFTAG_COMPRESSION, COMPRESSION_NONE));
   const char *kind = form->is_tiled ? "tile" : "strip";
   guint32 n = form->n_striles * (guint32)(form->is_separate ? form->n_samples : 1);
-  if ((form->is_tiled ? TIFFNumberOfTiles(file->tif) : TIFFNumberOfStrips(file->tif)) != n)
-    return aw_tiff_fail(file, AW_ERROR_FORMAT, error, "does not have the %u %ss its size calls for", n, kind);
   for (guint32 i = 0; i < n; i++) {
     int failed = 0;
     guint64 at = TIFFGetStrileOffsetWithErr(file->tif, i, &failed);

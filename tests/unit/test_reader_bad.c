@@ -4,6 +4,7 @@
 #include <stdio.h>
 #include <string.h>
 #include <sys/stat.h>
+#include <unistd.h>
 #include <zlib.h>
 
 #include "../support/check.h"
@@ -319,6 +320,58 @@ static void strips_missing(void)
   check_refused(beyond, 0, -1, AW_ERROR_FORMAT, "is cut off: strip 1 of 2 takes 4 bytes from byte 900, the file has");
 }
 
+static void strile_sizes(void)
+{
+  static const struct {
+    guint32 width, height;
+    const char *parts;
+  } cases[] = { { 300000, 16, "page 0|claims tiles of 300000 x 16 px; the limits are 1 to 200000" },
+                { 16, 300000, "page 0|claims tiles of 16 x 300000 px" },
+                { 0, 16, "bad.tif" },
+                { 16, 0, "bad.tif" } };
+  for (gsize i = 0; i < G_N_ELEMENTS(cases); i++) {
+    g_autoptr(TiffBytes) t = small();
+    tiff_bytes_set(t, 322, TIFF_U32, cases[i].width);
+    tiff_bytes_set(t, 323, TIFF_U32, cases[i].height);
+    check_refused(t, 0, -1, AW_ERROR_FORMAT, cases[i].parts);
+  }
+  g_autoptr(TiffBytes) no_rows = small();
+  tiff_bytes_set(no_rows, 278, TIFF_U32, 0);
+  check_refused(no_rows, 0, -1, AW_ERROR_FORMAT, "bad.tif");
+}
+
+static void volumes_and_samples(void)
+{
+  g_autoptr(TiffBytes) volume = small();
+  tiff_bytes_set(volume, 32997, TIFF_U32, 3);
+  check_refused(volume, 0, -1, AW_ERROR_UNSUPPORTED, "page 0|is a volume of depth 3; only flat planes are read");
+  guint32 bits[65];
+  for (int i = 0; i < 65; i++)
+    bits[i] = 8;
+  g_autoptr(TiffBytes) many = small();
+  tiff_bytes_set_list(many, 258, TIFF_U16, bits, 65);
+  tiff_bytes_set(many, 277, TIFF_U16, 65);
+  check_refused(many, 0, 0, AW_ERROR_UNSUPPORTED, "page 0|has 65 samples a pixel; the limit is 64");
+}
+
+/* The file is cut while it is open, as an unfinished copy over a network may do. */
+static void shrinking(void)
+{
+  GError *error = NULL;
+  char *folder = aw_scratch_new();
+  g_autoptr(TiffBytes) t = small();
+  tiff_bytes_end_page(t);
+  g_autofree char *path = tiff_bytes_save(t, folder, "a.tif", 0);
+  g_autoptr(AwImageReader) reader = aw_image_reader_open(path, 0, -1, &error);
+  g_assert_no_error(error);
+  g_assert_cmpint(truncate(path, 15), ==, 0);
+  g_assert_null(aw_image_reader_read(reader, (AwRect){ 0, 0, 4, 3 }, &error));
+  aw_check_error(&error, AW_ERROR_FORMAT, "a.tif, page 0 is cut off: it ends at byte 15");
+  g_assert_null(aw_image_reader_read(reader, (AwRect){ 1, 2, 2, 3 }, &error));
+  aw_check_error(&error, AW_ERROR_FORMAT, "a.tif, page 0 is cut off: it ends at byte ");
+  aw_scratch_remove(folder);
+}
+
 static void broken_data(void)
 {
   static const guint32 compression[] = { 5, 8, 32773, 50000 };
@@ -384,6 +437,9 @@ int main(int argc, char **argv)
   g_test_add_func("/image/reader-bad/not-finite", not_finite);
   g_test_add_func("/image/reader-bad/broken-chain", broken_chain);
   g_test_add_func("/image/reader-bad/strips-missing", strips_missing);
+  g_test_add_func("/image/reader-bad/strile-sizes", strile_sizes);
+  g_test_add_func("/image/reader-bad/volumes-and-samples", volumes_and_samples);
+  g_test_add_func("/image/reader-bad/shrinking", shrinking);
   g_test_add_func("/image/reader-bad/broken-data", broken_data);
   g_test_add_func("/image/reader-bad/short-data", short_data);
   g_test_add_func("/image/reader-bad/quiet", quiet);
