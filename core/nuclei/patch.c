@@ -8,6 +8,7 @@
 #include "base/limits.h"
 
 #define BLUR_REACH_SIGMA 4.0
+#define FAR_PX 1e9
 
 void aw_patch_init(AwPatch *patch)
 {
@@ -21,6 +22,12 @@ void aw_patch_clear(AwPatch *patch)
   aw_patch_init(patch);
 }
 
+/* The pixel whose square holds x; far beyond any frame it stays there, so that widths fit an int. */
+static int pixel_of(double x)
+{
+  return (int)CLAMP(floor(x + 0.5), -FAR_PX, FAR_PX);
+}
+
 AwRect aw_points_rect(const AwPixelPoint *points, gsize n, double margin_px)
 {
   double x0 = points[0].x_px, x1 = x0, y0 = points[0].y_px, y1 = y0;
@@ -30,8 +37,8 @@ AwRect aw_points_rect(const AwPixelPoint *points, gsize n, double margin_px)
     y0 = MIN(y0, points[i].y_px);
     y1 = MAX(y1, points[i].y_px);
   }
-  return (AwRect){ (int)floor(x0 - margin_px + 0.5), (int)floor(y0 - margin_px + 0.5),
-                   (int)floor(x1 + margin_px + 0.5) + 1, (int)floor(y1 + margin_px + 0.5) + 1 };
+  return (AwRect){ pixel_of(x0 - margin_px), pixel_of(y0 - margin_px), pixel_of(x1 + margin_px) + 1,
+                   pixel_of(y1 + margin_px) + 1 };
 }
 
 /* Empties the patch and makes room for `rect`. */

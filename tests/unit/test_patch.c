@@ -114,12 +114,14 @@ static void add_in_bands(void)
 
 static void patch_memory(void)
 {
-  AwPixelPoint box[] = { { 0.0, 0.0 }, { 2e9, 0.0 }, { 2e9, 2e9 }, { 0.0, 2e9 } };
+  AwPixelPoint box[] = { { -9e8, -9e8 }, { 9e8, -9e8 }, { 9e8, 9e8 }, { -9e8, 9e8 } };
   g_auto(AwPatch) patch;
   aw_patch_init(&patch);
   g_autoptr(GError) error = NULL;
   g_assert_false(aw_patch_cover(&patch, box, 4, aw_points_rect(box, 4, 1.0), &error));
   g_assert_error(error, AW_ERROR, AW_ERROR_MEMORY);
+  AwRect far = aw_points_rect((AwPixelPoint[]){ { -1e300, 3.0 }, { 1e300, 4.0 } }, 2, 1.0);
+  g_assert_cmpint(far.x1 - far.x0, ==, 2000000001);
 }
 
 static void drawn_pieces(void)

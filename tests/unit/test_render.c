@@ -238,6 +238,21 @@ static void memory(void)
   g_assert_error(error, AW_ERROR, AW_ERROR_RANGE);
 }
 
+/* An object wider than any memory: both ways of drawing it say so. */
+static void vast_object(void)
+{
+  AwScanPoint box[] = { { -5e8, -5e8 }, { 5e8, -5e8 }, { 5e8, 5e8 }, { -5e8, 5e8 } };
+  g_autoptr(GPtrArray) truths = aw_truths_new();
+  g_ptr_array_add(truths, aw_truth_new(AW_TRUTH_DEBRIS, box, 4));
+  AwRenderView view = view_at(0.0, 0.0, 0.0);
+  g_autoptr(GError) error = NULL;
+  g_assert_null(aw_render_frame(truths, &view, &clean, &error));
+  g_assert_error(error, AW_ERROR, AW_ERROR_MEMORY);
+  g_clear_error(&error);
+  g_assert_null(aw_render_labels(truths, &view, &error));
+  g_assert_error(error, AW_ERROR, AW_ERROR_MEMORY);
+}
+
 int main(int argc, char **argv)
 {
   g_test_init(&argc, &argv, NULL);
@@ -250,5 +265,6 @@ int main(int argc, char **argv)
   g_test_add_func("/nuclei/render/bands", bands);
   g_test_add_func("/nuclei/render/labels", labels);
   g_test_add_func("/nuclei/render/memory", memory);
+  g_test_add_func("/nuclei/render/vast_object", vast_object);
   return g_test_run();
 }
