@@ -89,7 +89,8 @@ static int compare_hits(gconstpointer a, gconstpointer b)
 
 static AwGridHit hit_at(const AwGrid *grid, gsize slot, double x, double y)
 {
-  return (AwGridHit){ grid->index[slot], hypot(grid->xy[2 * slot] - x, grid->xy[2 * slot + 1] - y) };
+  double dx = grid->xy[2 * slot] - x, dy = grid->xy[2 * slot + 1] - y;
+  return (AwGridHit){ grid->index[slot], sqrt(dx * dx + dy * dy) };
 }
 
 /* A search for the k nearest points to (x, y); hits[0 ... n-1] are the best so far, in order. */

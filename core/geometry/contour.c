@@ -10,7 +10,7 @@
 #define LEVEL (FULL / 2 - 0.5)
 #define TOLERANCE_PX 0.1
 /* Smoothing along the line: points this far apart, standard deviation per square root of the radius in px. */
-#define SPACING_PX 2
+#define SPACING_PX 2.5
 #define SMOOTHING 0.9
 #define MIN_SMOOTHED_POINTS 12
 #define MAX_KERNEL 64
@@ -209,8 +209,8 @@ static double line_length(const GArray *points)
 static GArray *smooth_along(const GArray *points, double area)
 {
   double length = line_length(points), kernel[MAX_KERNEL + 1];
-  gsize n = (gsize)(length / SPACING_PX);
-  if (n < MIN_SMOOTHED_POINTS)
+  gsize n = MAX((gsize)(length / SPACING_PX), MIN_SMOOTHED_POINTS);
+  if (length < MIN_SMOOTHED_POINTS)
     return NULL;
   double sigma = SMOOTHING * sqrt(2 * area / length) / (length / (double)n);
   gsize reach = MIN(twiced_gaussian(sigma, kernel), n / 2);

@@ -29,7 +29,8 @@ static GArray *all_sorted(const double *xy, gsize n, double x, double y)
 {
   GArray *hits = g_array_new(FALSE, FALSE, sizeof(AwGridHit));
   for (gsize i = 0; i < n; i++) {
-    AwGridHit hit = { i, hypot(xy[2 * i] - x, xy[2 * i + 1] - y) };
+    double dx = xy[2 * i] - x, dy = xy[2 * i + 1] - y;
+    AwGridHit hit = { i, sqrt(dx * dx + dy * dy) };
     g_array_append_val(hits, hit);
   }
   g_array_sort(hits, compare);
