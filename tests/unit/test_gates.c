@@ -2,6 +2,7 @@
 #include "plan/gates.h"
 
 #include <math.h>
+#include <string.h>
 
 #include "../support/check.h"
 
@@ -78,6 +79,21 @@ static void defaults(void)
   }
 }
 
+/* Whoever adds a feature tells so in docs/formats.md. */
+static void features_are_documented(void)
+{
+  gsize n = 0;
+  const AwFeature *features = aw_features(&n);
+  g_autofree char *page = NULL;
+  g_assert_true(g_file_get_contents("docs/formats.md", &page, NULL, NULL));
+  for (gsize i = 0; i < n; i++) {
+    g_autofree char *name = aw_feature_name(&features[i], TRUE);
+    g_autofree char *quoted = g_strdup_printf("`%s`", name);
+    if (!strstr(page, quoted))
+      g_error("docs/formats.md does not tell of %s", quoted);
+  }
+}
+
 static void add(GPtrArray *nuclei, double area, double convexity, guint flags)
 {
   AwNucleus *nucleus = g_new0(AwNucleus, 1);
@@ -143,6 +159,7 @@ int main(int argc, char **argv)
   aw_check_add("/plan/gates/text_for_people", text_for_people);
   aw_check_add("/plan/gates/refused", refused);
   aw_check_add("/plan/gates/defaults", defaults);
+  aw_check_add("/plan/gates/features_are_documented", features_are_documented);
   aw_check_add("/plan/gates/applying", applying);
   aw_check_add("/plan/gates/in_turn", in_turn);
   aw_check_add("/plan/gates/applying_nothing", applying_nothing);

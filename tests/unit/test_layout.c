@@ -49,6 +49,19 @@ static void from_file(void)
   aw_scratch_remove(folder);
 }
 
+/* The example of docs/formats.md: the indented lines from [layout] to the table below it. */
+static void documented_example(void)
+{
+  g_autofree char *page = NULL;
+  g_assert_true(g_file_get_contents("docs/formats.md", &page, NULL, NULL));
+  char *begin = strstr(page, "    [layout]\n");
+  g_assert_nonnull(begin);
+  *strstr(begin, "\n|") = '\0';
+  g_auto(GStrv) lines = g_strsplit(begin, "\n    ", -1);
+  g_autofree char *text = g_strjoinv("\n", lines);
+  accept(g_strchug(text));
+}
+
 static void everything_set(void)
 {
   accept("[layout]\nname=n\nabout=for people\nseparator=space\nline-ending=crlf\nheader=no\ncomments=beside\n"
@@ -134,6 +147,7 @@ int main(int argc, char **argv)
   g_test_init(&argc, &argv, NULL);
   aw_check_add("/plan/layout/built_in", built_in);
   aw_check_add("/plan/layout/from_file", from_file);
+  aw_check_add("/plan/layout/documented_example", documented_example);
   aw_check_add("/plan/layout/everything_set", everything_set);
   aw_check_add("/plan/layout/bad_head", bad_head);
   aw_check_add("/plan/layout/bad_limits", bad_limits);
