@@ -86,6 +86,22 @@ static void meet(Regions *r, guint32 a, guint32 b, float value, float height)
     r->parent[low] = a == low ? b : a;
 }
 
+static guint32 highest_neighbour(const float *value, int width, int height, guint32 i, const guint32 *label)
+{
+  int x = (int)(i % (guint32)width), y = (int)(i / (guint32)width);
+  guint32 best = 0;
+  float top = 0;
+  for (int dy = y > 0 ? -1 : 0; dy <= (y + 1 < height ? 1 : 0); dy++)
+    for (int dx = x > 0 ? -1 : 0; dx <= (x + 1 < width ? 1 : 0); dx++) {
+      gsize j = (gsize)((gssize)i + (gssize)dy * width + dx);
+      if (label[j] && (!best || value[j] > top)) {
+        best = label[j];
+        top = value[j];
+      }
+    }
+  return best;
+}
+
 static void place(const float *value, int width, int height, guint32 i, float h, Regions *r, guint32 *label)
 {
   int x = (int)(i % (guint32)width), y = (int)(i / (guint32)width), n = 0;
@@ -137,4 +153,28 @@ guint32 aw_watershed(const float *value, const guint8 *mask, int width, int heig
   g_free(r.parent);
   g_free(r.peak);
   return n_out;
+}
+
+guint32 aw_flood_gaps(const float *value, const guint8 *mask, int width, int height, guint32 *label)
+{
+  gsize n_all = (gsize)width * (gsize)height;
+  g_autofree guint8 *gap = g_new(guint8, n_all);
+  for (gsize i = 0; i < n_all; i++)
+    gap[i] = mask[i] && !label[i];
+  float lo = 0, hi = 0;
+  gsize n = collect(value, gap, n_all, &lo, &hi), left = n;
+  g_autofree Pixel *pixel = g_new(Pixel, n + 1);
+  g_autofree Pixel *spare = g_new(Pixel, n + 1);
+  sort_falling(value, gap, n_all, pixel, spare, n, lo, hi);
+  for (gsize before = left + 1; left > 0 && left < before;) {
+    before = left;
+    gsize kept = 0;
+    for (gsize k = 0; k < left; k++) {
+      label[pixel[k].at] = highest_neighbour(value, width, height, pixel[k].at, label);
+      if (!label[pixel[k].at])
+        pixel[kept++] = pixel[k];
+    }
+    left = kept;
+  }
+  return (guint32)left;
 }

@@ -18,4 +18,8 @@
 guint32 aw_watershed(const float *value, const guint8 *mask, int width, int height, double saddle_height,
                      guint32 *label);
 
+/* Gives mask pixels without a label that of their highest labelled neighbour, in falling order of value; returns the
+ * number of pixels that no label could reach. */
+guint32 aw_flood_gaps(const float *value, const guint8 *mask, int width, int height, guint32 *label);
+
 #endif

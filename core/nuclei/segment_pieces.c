@@ -135,6 +135,53 @@ static void write_objects(AwSegmentWork *w, const AwCluster *c, const AwPieces *
   }
 }
 
+/* Draws the lines between the objects again where they are sharpest: pixels near a line are given out anew. */
+static void redraw_lines(AwCluster *c, const AwPieces *p, const AwSegmentWork *w)
+{
+  int n_rounds = (int)lround(w->rules->line_band * w->scale.radius_px), cw = c->width, ch = c->height;
+  gsize n = (gsize)cw * (gsize)ch;
+  for (gsize i = 0; i < n; i++)
+    if (c->label[i])
+      c->label[i] = aw_pieces_root(p, c->label[i]);
+  if (n_rounds < 1)
+    return;
+  g_autofree guint32 *old = g_new(guint32, n);
+  g_autofree guint8 *near = g_new0(guint8, n);
+  g_autofree guint8 *next = g_new0(guint8, n);
+  for (int y = 0; y < ch; y++)
+    for (int x = 0; x < cw; x++) {
+      gsize i = (gsize)y * (gsize)cw + (gsize)x;
+      guint32 k = c->label[i];
+      near[i] = k && ((x > 0 && c->label[i - 1] && c->label[i - 1] != k) ||
+                      (x + 1 < cw && c->label[i + 1] && c->label[i + 1] != k) ||
+                      (y > 0 && c->label[i - (gsize)cw] && c->label[i - (gsize)cw] != k) ||
+                      (y + 1 < ch && c->label[i + (gsize)cw] && c->label[i + (gsize)cw] != k));
+    }
+  for (int round = 1; round < n_rounds; round++) {
+    memcpy(next, near, n);
+    for (int y = 0; y < ch; y++)
+      for (int x = 0; x < cw; x++) {
+        gsize i = (gsize)y * (gsize)cw + (gsize)x;
+        if (near[i] || !c->label[i])
+          continue;
+        next[i] = (x > 0 && near[i - 1]) || (x + 1 < cw && near[i + 1]) || (y > 0 && near[i - (gsize)cw]) ||
+                  (y + 1 < ch && near[i + (gsize)cw]);
+      }
+    memcpy(near, next, n);
+  }
+  memcpy(old, c->label, n * sizeof *old);
+  for (gsize i = 0; i < n; i++)
+    if (near[i])
+      c->label[i] = 0;
+  for (gsize i = 0; i < n; i++)
+    c->land[i] = c->distance[i] / (float)w->scale.radius_px * (float)w->rules->line_distance +
+                 c->clear[i] / (float)w->scale.height;
+  aw_flood_gaps(c->land, c->mask, cw, ch, c->label);
+  for (gsize i = 0; i < n; i++)
+    if (!c->label[i])
+      c->label[i] = old[i];
+}
+
 static gboolean work_cluster(AwSegmentWork *w, const AwMaskRuns *runs, const gsize *first, gsize n_runs, AwRect box,
                              GError **error)
 {
@@ -146,6 +193,7 @@ static gboolean work_cluster(AwSegmentWork *w, const AwMaskRuns *runs, const gsi
     if (w->probe && w->probe->truth)
       find_homes(&p, &c, w);
     aw_pieces_merge(&p, w);
+    redraw_lines(&c, &p, w);
     write_objects(w, &c, &p);
     aw_pieces_clear(&p);
   }

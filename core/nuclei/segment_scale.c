@@ -68,7 +68,7 @@ static void find_peaks(const AwPlane *p, double least, gboolean square, GArray *
     for (int x = 0; x < p->width_px; x++) {
       double v = (double)aw_plane_row(p, y)[x];
       if (v > least && is_peak(p, x, y)) {
-        double w = square ? v * v : 1;
+        double w = square ? v : 1;
         g_array_append_val(value, v);
         g_array_append_val(weight, w);
       }
@@ -119,6 +119,9 @@ static double typical_height(const AwPlane *clear, double radius_px, double nois
   double least = MAX(0.5 * (double)aw_otsu(soft->value, n_px(soft)), 3 * noise);
   find_peaks(soft, least, FALSE, value, weight);
   *n_peaks = value->len;
+  double middle = median_of(value, weight);
+  for (guint i = 0; i < value->len; i++)
+    g_array_index(weight, double, i) = MIN(g_array_index(value, double, i), middle);
   return median_of(value, weight);
 }
 

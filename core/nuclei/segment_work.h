@@ -13,18 +13,19 @@
 
 /* The numbers of the method, all free of scale: lengths in R, brightness in heights, noise in its deviation. */
 typedef struct {
-  double blur_px;            /* first smoothing */
-  double ground_radii;       /* disc of the background opening */
-  double height_blur;        /* smoothing before heights are read, R */
-  double detect_height;      /* detection level over the typical height ... */
-  double detect_noise;       /* ... or over the noise, whichever is higher */
-  double blob_scale;         /* width of the blob filter, R */
-  double blob_floor;         /* added under the logarithm, over the typical height */
-  double zone_saddle;        /* dynamics below which blobs are one zone */
-  double zone_level;         /* first outline, part of the zone's plateau */
-  double piece_saddle;       /* dynamics below which pieces are one */
-  double piece_blur;         /* smoothing of the distance, R */
-  double blob_weight;        /* blob against distance in the piece landscape */
+  double blur_px;       /* first smoothing */
+  double ground_radii;  /* disc of the background opening */
+  double height_blur;   /* smoothing before heights are read, R */
+  double detect_height; /* detection level over the typical height ... */
+  double detect_noise;  /* ... or over the noise, whichever is higher */
+  double blob_scale;    /* width of the blob filter, R */
+  double blob_floor;    /* added under the logarithm, over the typical height */
+  double zone_saddle;   /* dynamics below which blobs are one zone */
+  double zone_level;    /* first outline, part of the zone's plateau */
+  double piece_saddle;  /* dynamics below which pieces are one */
+  double piece_blur;    /* smoothing of the distance, R */
+  double blob_weight;   /* blob against distance in the piece landscape */
+  double line_band, line_distance;
   double merge_bias;         /* added to the merge log-odds */
   double outline_shift;      /* added to the level of every outline */
   double ring_from, ring_to; /* ring of the local background, R from the nucleus */
