@@ -249,6 +249,28 @@ static void colour_channel(void)
   aw_scratch_remove(folder);
 }
 
+/* Two samples a pixel are no colour and need a choice. */
+static void two_samples(void)
+{
+  const char *xml = HEAD "<Image><Pixels SizeX=\"2\" SizeY=\"1\" SizeZ=\"1\" SizeC=\"2\" SizeT=\"1\">"
+                         "<Channel SamplesPerPixel=\"2\"/><TiffData/></Pixels></Image></OME>";
+  char *folder = aw_scratch_new();
+  g_autoptr(TiffBytes) t = tiff_bytes_new(FALSE);
+  tiff_bytes_grey(t, 2, 1, 8, "\1\2\3\4", 4);
+  tiff_bytes_set_list(t, 258, TIFF_U16, (guint32[]){ 8, 8 }, 2);
+  tiff_bytes_set(t, 277, TIFF_U16, 2);
+  tiff_bytes_set_text(t, 270, xml);
+  tiff_bytes_end_page(t);
+  g_autofree char *path = tiff_bytes_save(t, folder, "two.ome.tif", 0);
+  GError *error = NULL;
+  g_assert_null(aw_image_load(path, 0, -1, NULL, &error));
+  aw_check_error(&error, AW_ERROR_UNSUPPORTED, "page 0 has 2 channels|--channel 0 to 1");
+  g_autoptr(AwImage) second = aw_image_load(path, 0, 1, NULL, &error);
+  g_assert_no_error(error);
+  g_assert_cmpfloat(aw_image_value(second, 1, 0), ==, 4);
+  aw_scratch_remove(folder);
+}
+
 static void bad_metadata(void)
 {
 #define SIZES(x, c, z) "<Image><Pixels SizeX=\"" x "\" SizeY=\"3\" SizeZ=\"" z "\" SizeC=\"" c "\" SizeT=\"1\">"
@@ -314,6 +336,7 @@ int main(int argc, char **argv)
   g_test_add_func("/image/ome/several-images", several_images);
   g_test_add_func("/image/ome/several-files", several_files);
   g_test_add_func("/image/ome/colour-channel", colour_channel);
+  g_test_add_func("/image/ome/two-samples", two_samples);
   aw_check_add("/image/ome/bad-metadata", bad_metadata);
   g_test_add_func("/image/ome/missing-plane", missing_plane);
   g_test_add_func("/image/ome/endless-planes", endless_planes);

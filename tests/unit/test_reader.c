@@ -148,6 +148,25 @@ static void grey_in_rgb(void)
   check_load(planes, -1, (double[]){ 1, 5, 99, 7 }, NULL, 255);
 }
 
+/* 16-bit RGB and big-endian floats, the forms whose bytes are moved one by one. */
+static void wide_samples(void)
+{
+  g_autoptr(TiffBytes) colour = tiff_bytes_new(TRUE);
+  tiff_bytes_grey(colour, 2, 1, 16, "\1\0\1\0\1\0\2\1\2\1\2\1", 12);
+  tiff_bytes_set_list(colour, 258, TIFF_U16, (guint32[]){ 16, 16, 16 }, 3);
+  tiff_bytes_set(colour, 262, TIFF_U16, 2);
+  tiff_bytes_set(colour, 277, TIFF_U16, 3);
+  check_load(colour, -1, (double[]){ 256, 513 }, NULL, 65535);
+  g_autoptr(TiffBytes) real = tiff_bytes_new(TRUE);
+  tiff_bytes_grey(real, 2, 1, 32, "\xc0\x30\0\0\x3f\x80\0\0", 8);
+  tiff_bytes_set(real, 339, TIFF_U16, 3);
+  check_load(real, -1, (double[]){ -2.75, 1 }, NULL, 0);
+  g_autoptr(TiffBytes) no_format = tiff_bytes_new(TRUE);
+  tiff_bytes_grey(no_format, 1, 1, 16, "\1\2", 2);
+  tiff_bytes_set(no_format, 339, TIFF_U16, 4);
+  check_load(no_format, -1, (double[]){ 258 }, NULL, 65535);
+}
+
 static void chosen_channel(void)
 {
   g_autoptr(TiffBytes) side = rgb("\1\2\3\5\6\7\11\12\13\15\16\17", FALSE);
@@ -303,6 +322,58 @@ static void rectangles_of_tiles(void)
   aw_scratch_remove(folder);
 }
 
+/* One PackBits strip of 16400 x 8200 px, too long to be held whole; row y is all y mod 251. */
+static TiffBytes *long_strip(void)
+{
+  g_autoptr(GByteArray) packed = g_byte_array_new();
+  for (int y = 0; y < 8200; y++)
+    for (int x = 0; x < 16400; x += 128)
+      g_byte_array_append(packed, (guint8[]){ (guint8)(257 - MIN(128, 16400 - x)), (guint8)(y % 251) }, 2);
+  TiffBytes *t = tiff_bytes_new(FALSE);
+  tiff_bytes_grey(t, 16400, 8200, 8, packed->data, packed->len);
+  tiff_bytes_set(t, 259, TIFF_U16, 32773);
+  tiff_bytes_end_page(t);
+  return t;
+}
+
+static void long_strips(void)
+{
+  char *folder = aw_scratch_new();
+  g_autoptr(TiffBytes) t = long_strip();
+  g_autofree char *path = tiff_bytes_save(t, folder, "a.tif", 0);
+  g_autoptr(AwImageReader) reader = aw_image_reader_open(path, 0, -1, NULL);
+  /* on from the last row, back to the top, and over a gap */
+  const AwRect rects[] = { { 0, 0, 9, 300 }, { 16390, 300, 16400, 310 }, { 5, 2, 6, 4 }, { 100, 8190, 104, 8200 } };
+  for (gsize i = 0; i < G_N_ELEMENTS(rects); i++) {
+    AwRect r = rects[i];
+    g_autoptr(AwImage) image = aw_image_reader_read(reader, r, NULL);
+    for (int y = r.y0; y < r.y1; y++)
+      for (int x = r.x0; x < r.x1; x++)
+        g_assert_cmpfloat(aw_image_value(image, x - r.x0, y - r.y0), ==, y % 251);
+  }
+  aw_scratch_remove(folder);
+}
+
+/* A run over the end of row 1000; what stands above it can still be read. */
+static void broken_long_strip(void)
+{
+  char *folder = aw_scratch_new();
+  GError *error = NULL;
+  g_autoptr(TiffBytes) t = long_strip();
+  GByteArray *all = tiff_bytes_all(t);
+  for (guint i = 8 + 1000 * 258; i < all->len - 200; i++)
+    all->data[i] = 0x80; /* no operation */
+  g_autofree char *path = tiff_bytes_save(t, folder, "a.tif", 0);
+  g_autoptr(AwImageReader) reader = aw_image_reader_open(path, 0, -1, &error);
+  g_assert_no_error(error);
+  g_assert_null(aw_image_reader_read(reader, (AwRect){ 0, 990, 3, 1010 }, &error));
+  aw_check_error(&error, AW_ERROR_FORMAT, "a.tif, page 0 is damaged: row 1000 cannot be decoded: ");
+  g_autoptr(AwImage) above = aw_image_reader_read(reader, (AwRect){ 0, 990, 3, 1000 }, &error);
+  g_assert_no_error(error);
+  g_assert_cmpfloat(aw_image_value(above, 2, 9), ==, 999 % 251);
+  aw_scratch_remove(folder);
+}
+
 /* The name says PNG, the bytes TIFF: the bytes count. */
 static void content_not_name(void)
 {
@@ -328,6 +399,7 @@ int main(int argc, char **argv)
   g_test_add_func("/image/reader/part-of-packed", part_of_packed);
   g_test_add_func("/image/reader/floats", floats);
   g_test_add_func("/image/reader/grey-in-rgb", grey_in_rgb);
+  g_test_add_func("/image/reader/wide-samples", wide_samples);
   g_test_add_func("/image/reader/chosen-channel", chosen_channel);
   g_test_add_func("/image/reader/resolution", resolution);
   g_test_add_func("/image/reader/oblong-pixels", oblong_pixels);
@@ -335,6 +407,8 @@ int main(int argc, char **argv)
   g_test_add_func("/image/reader/pages", pages);
   g_test_add_func("/image/reader/rectangles-of-strips", rectangles_of_strips);
   g_test_add_func("/image/reader/rectangles-of-tiles", rectangles_of_tiles);
+  g_test_add_func("/image/reader/long-strips", long_strips);
+  g_test_add_func("/image/reader/broken-long-strip", broken_long_strip);
   g_test_add_func("/image/reader/content-not-name", content_not_name);
   return g_test_run();
 }

@@ -218,6 +218,9 @@ static void colour_forms(void)
   g_autoptr(TiffBytes) ink = small();
   tiff_bytes_set(ink, 262, TIFF_U16, 5);
   check_refused(ink, 0, -1, AW_ERROR_UNSUPPORTED, "colour form 5 (CMYK)");
+  g_autoptr(TiffBytes) filter = small();
+  tiff_bytes_set(filter, 262, TIFF_U16, 32803);
+  check_refused(filter, 0, -1, AW_ERROR_UNSUPPORTED, "colour form 32803 (colour filter array)");
 }
 
 static TiffBytes *coloured(guint32 n_samples, guint32 photometric)
