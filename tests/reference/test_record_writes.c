@@ -27,7 +27,8 @@ static const struct {
                { "unlink:error=EIO", FALSE },      { "unlink:signal=KILL", FALSE },
                { "openat:error=EACCES", FALSE },   { "pread64:error=EIO", FALSE },
                { "fcntl:error=EAGAIN", FALSE },    { "fsync:error=EIO", TRUE },
-               { "renameat2:error=EIO", TRUE },    { "renameat2:signal=KILL", TRUE } };
+               { "renameat2:error=EIO", TRUE },    { "renameat2:signal=KILL", TRUE },
+               { "renameat2:error=EINVAL", TRUE } /* a file system that cannot do it: a link instead */ };
 
 /* --- the process that is hurt --- */
 

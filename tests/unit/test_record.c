@@ -267,6 +267,22 @@ static void test_no_pixel_map(Place *place, gconstpointer ignored)
   aw_check_error(&error, AW_ERROR_STATE, "no pixel map yet");
 }
 
+static void test_damaged_pixel_map(Place *place, gconstpointer ignored)
+{
+  (void)ignored;
+  GError *error = NULL;
+  AwPixelMap map;
+  g_autoptr(AwRecord) record = aw_test_dish_new(place->folder);
+  g_assert_true(aw_record_begin(record, "ada", &error) &&
+                aw_record_set_fact(record, "pixel_map.xx_um_per_px", "0", &error) &&
+                aw_record_set_fact(record, "pixel_map.xy_um_per_px", NULL, &error));
+  g_assert_false(aw_record_pixel_map(record, &map, &error));
+  aw_check_error(&error, AW_ERROR_FORMAT, "its pixel map has no inverse");
+  g_assert_true(aw_record_set_fact(record, "pixel_map.origin", "guessed", &error));
+  g_assert_false(aw_record_pixel_map(record, &map, &error));
+  aw_check_error(&error, AW_ERROR_FORMAT, "unknown origin 'guessed'");
+}
+
 static void test_read_only_mode(Place *place, gconstpointer ignored)
 {
   (void)ignored;
@@ -406,6 +422,7 @@ int main(int argc, char **argv)
   ADD("settings", test_settings);
   ADD("facts", test_facts);
   ADD("no-pixel-map", test_no_pixel_map);
+  ADD("damaged-pixel-map", test_damaged_pixel_map);
   ADD("read-only-mode", test_read_only_mode);
   ADD("open-foreign", test_open_foreign);
   ADD("open-newer", test_open_newer);

@@ -103,6 +103,48 @@ static void test_two_writers(Place *place, gconstpointer ignored)
   g_assert_cmpint(aw_scratch_count(place->folder), ==, 1);
 }
 
+/* Adds 1 to a fact, 25 times, each time as a writer of its own; waits while another holds the record. */
+static void count_up(const char *path)
+{
+  for (int done = 0; done < 25;) {
+    GError *error = NULL;
+    double value = 0;
+    g_autoptr(AwRecord) record = aw_record_open(path, AW_RECORD_WRITE, &error);
+    if (!record) {
+      aw_check_error(&error, AW_ERROR_LOCKED, "dish.dish");
+      g_usleep(300);
+      continue;
+    }
+    g_assert_true(aw_record_begin(record, "ada", &error) && aw_record_fact_double(record, "n", 0, &value, &error) &&
+                  aw_record_set_fact_double(record, "n", value + 1, &error) && aw_record_commit(record, "add", &error));
+    done++;
+  }
+}
+
+/* The lock file comes and goes while four processes compete for it: none may slip in beside another. */
+static void test_lock_changes_hands(Place *place, gconstpointer ignored)
+{
+  (void)ignored;
+  GError *error = NULL;
+  pid_t children[4];
+  double n = 0;
+  aw_record_free(aw_test_dish_new(place->folder));
+  for (gsize i = 0; i < G_N_ELEMENTS(children); i++)
+    if ((children[i] = fork()) == 0) {
+      count_up(place->path);
+      _exit(0);
+    }
+  for (gsize i = 0; i < G_N_ELEMENTS(children); i++) {
+    int status = 1;
+    g_assert_cmpint(waitpid(children[i], &status, 0), ==, children[i]);
+    g_assert_cmpint(status, ==, 0);
+  }
+  g_autoptr(AwRecord) record = open_or_fail(place->path, AW_RECORD_READ);
+  g_assert_true(aw_record_fact_double(record, "n", 0, &n, &error));
+  g_assert_cmpfloat(n, ==, 100);
+  g_assert_cmpint(aw_scratch_count(place->folder), ==, 1);
+}
+
 static void test_two_creators(Place *place, gconstpointer ignored)
 {
   (void)ignored;
@@ -374,6 +416,7 @@ int main(int argc, char **argv)
   ADD("half-written", test_half_written);
   ADD("half-written-read-only", test_half_written_read_only);
   ADD("two-writers", test_two_writers);
+  ADD("lock-changes-hands", test_lock_changes_hands);
   ADD("two-creators", test_two_creators);
   ADD("reader-sees-last-commit", test_reader_sees_last_commit);
   ADD("stubborn-reader", test_stubborn_reader);

@@ -397,6 +397,18 @@ static void test_decision_entry(Dish *dish, gconstpointer ignored)
   g_assert_cmpint(entry, ==, 3);
 }
 
+static void test_damaged_decision(Dish *dish, gconstpointer ignored)
+{
+  (void)ignored;
+  GError *error = NULL;
+  aw_test_dish_segment(dish->record, 3);
+  aw_test_dish_accept(dish->record, 2);
+  g_assert_true(
+      aw_sql_exec(dish->record, "PRAGMA ignore_check_constraints = ON; UPDATE decision SET state = 9", &error));
+  g_assert_null(aw_record_decisions(dish->record, &error));
+  aw_check_error(&error, AW_ERROR_FORMAT, "nucleus 2 has the unknown state 9");
+}
+
 static void test_gates(Dish *dish, gconstpointer ignored)
 {
   (void)ignored;
@@ -461,6 +473,7 @@ int main(int argc, char **argv)
   ADD("damaged-frames", test_damaged_frames);
   ADD("decisions", test_decisions);
   ADD("decision-entry", test_decision_entry);
+  ADD("damaged-decision", test_damaged_decision);
   ADD("gates", test_gates);
   ADD("tour", test_tour);
   return g_test_run();

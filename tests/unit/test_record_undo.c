@@ -347,9 +347,12 @@ static void test_altered_journal(Dish *dish, gconstpointer ignored)
   alter(dish, "INSERT INTO journal VALUES(3, 0, 'x', 'y', 4, 2)");
   g_assert_false(aw_record_undo(dish->record, "grace", NULL, &error));
   aw_check_error(&error, AW_ERROR_FORMAT, "entry 3 does not fit those before it");
+  alter(dish, "PRAGMA foreign_keys = OFF; INSERT INTO journal VALUES(4, 0, 'x', 'y', 3, 77); PRAGMA foreign_keys = ON");
+  g_assert_null(aw_record_journal(dish->record, &error));
+  aw_check_error(&error, AW_ERROR_FORMAT, "the journal undoes entry 77, which is not there");
   alter(dish, "INSERT INTO journal VALUES(9, 0, 'x', 'y', 1, NULL)");
   g_assert_null(aw_record_journal(dish->record, &error));
-  aw_check_error(&error, AW_ERROR_FORMAT, "journal entry 4 is missing");
+  aw_check_error(&error, AW_ERROR_FORMAT, "journal entry 5 is missing");
 }
 
 /* More than one part of packed changes. */
