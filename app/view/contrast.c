@@ -38,7 +38,7 @@ void aw_contrast_set_percentiles(AwContrast *contrast, const AwImage *const *ima
   for (gsize k = 0; k < n; k++)
     total += n_pixels(images[k]);
   gsize stride = total / MAX_SAMPLED + 1, next = 0;
-  g_autofree double *taken = g_new(double, total / stride + 2);
+  double *taken = g_new(double, total / stride + 2);
   for (gsize k = 0; k < n; k++) {
     for (; next < n_pixels(images[k]); next += stride) {
       double value = pixel(images[k], next);
@@ -47,11 +47,12 @@ void aw_contrast_set_percentiles(AwContrast *contrast, const AwImage *const *ima
     }
     next -= n_pixels(images[k]);
   }
-  if (n_taken == 0)
-    return;
   gsl_sort(taken, 1, n_taken);
-  contrast->low = gsl_stats_quantile_from_sorted_data(taken, 1, n_taken, low_frac);
-  contrast->high = gsl_stats_quantile_from_sorted_data(taken, 1, n_taken, high_frac);
+  if (n_taken > 0) {
+    contrast->low = gsl_stats_quantile_from_sorted_data(taken, 1, n_taken, low_frac);
+    contrast->high = gsl_stats_quantile_from_sorted_data(taken, 1, n_taken, high_frac);
+  }
+  g_free(taken);
 }
 
 struct AwGreys {

@@ -15,6 +15,7 @@ typedef struct {
 
 struct AwHitIndex {
   GPtrArray *nuclei;
+  AwScanPoint *centroid;
   Bounds *bounds; /* of each nucleus's outline and centroid */
   double x0, y0, cell_um, reach_um;
   int n_across, n_down;
@@ -113,11 +114,15 @@ AwHitIndex *aw_hit_index_new(GPtrArray *nuclei)
 {
   g_return_val_if_fail(nuclei, NULL);
   AwHitIndex *index = g_new0(AwHitIndex, 1);
-  g_autofree guint8 *usable = g_new0(guint8, nuclei->len + 1);
+  guint8 *usable = g_new0(guint8, nuclei->len + 1);
   index->nuclei = g_ptr_array_ref(nuclei);
   index->bounds = g_new0(Bounds, nuclei->len + 1);
+  index->centroid = g_new(AwScanPoint, nuclei->len + 1);
+  for (guint i = 0; i < nuclei->len; i++)
+    index->centroid[i] = nucleus_at(index, i)->centroid;
   lay_grid(index, usable);
   fill_grid(index, usable);
+  g_free(usable);
   return index;
 }
 
@@ -126,10 +131,16 @@ void aw_hit_index_free(AwHitIndex *index)
   if (!index)
     return;
   g_ptr_array_unref(index->nuclei);
+  g_free(index->centroid);
   g_free(index->bounds);
   g_free(index->first);
   g_free(index->item);
   g_free(index);
+}
+
+const AwScanPoint *aw_hit_centroids(const AwHitIndex *index)
+{
+  return index->centroid;
 }
 
 gboolean aw_polygon_contains(const AwScanPoint *polygon, gsize n, AwScanPoint q)
@@ -204,16 +215,19 @@ static int by_number(const void *a, const void *b)
 /* Sorts numbers below n, none twice; many are faster ticked off in a list of all. */
 static void sort_items(GArray *found, guint n)
 {
+  if (found->len < 2)
+    return;
   if (found->len < n / 16) {
     qsort(found->data, found->len, sizeof(guint), by_number);
     return;
   }
-  g_autofree guint8 *ticked = g_new0(guint8, n + 1);
+  guint8 *ticked = g_new0(guint8, n + 1);
   for (guint i = 0; i < found->len; i++)
     ticked[g_array_index(found, guint, i)] = 1;
   for (guint i = 0, k = 0; i < n; i++)
     if (ticked[i])
       g_array_index(found, guint, k++) = i;
+  g_free(ticked);
 }
 
 /* Everything in the cells, rising. */

@@ -16,6 +16,9 @@ AwHitIndex *aw_hit_index_new(GPtrArray *nuclei);
 void aw_hit_index_free(AwHitIndex *index);
 G_DEFINE_AUTOPTR_CLEANUP_FUNC(AwHitIndex, aw_hit_index_free)
 
+/* The nuclei's centroids side by side, which is quicker to walk than the nuclei; owned by the index. */
+const AwScanPoint *aw_hit_centroids(const AwHitIndex *index);
+
 /* TRUE when q lies inside the polygon by the rule of odd crossings. */
 gboolean aw_polygon_contains(const AwScanPoint *polygon, gsize n, AwScanPoint q);
 

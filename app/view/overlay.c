@@ -6,7 +6,7 @@
 #include "view/overlay_parts.h"
 
 #define OUTLINE_FROM 6.0 /* typical diameter from which outlines are drawn, logical px */
-#define MAX_FULL 1500    /* nuclei in view that are drawn in full style: about 4 us each */
+#define MAX_FULL 1000    /* nuclei in view that are drawn in full style: about 4 us each */
 
 struct AwOverlay {
   AwRaster *raster;
@@ -70,6 +70,7 @@ static AwPass start(AwOverlay *overlay, cairo_t *cr, const AwScene *scene, const
 {
   AwMatrix m = scene->upright->px_per_um;
   AwPass pass = { .scene = scene, .view = view, .cr = cr, .raster = overlay->raster, .u = scene->scale };
+  pass.centroid = aw_hit_centroids(scene->index);
   pass.px_per_um = (AwMatrix){ m.xx * view->zoom, m.xy * view->zoom, m.yx * view->zoom, m.yy * view->zoom };
   pass.origin = aw_viewport_from_dish(view, (AwPixelPoint){ 0, 0 });
   pass.size = scene->nucleus_um * sqrt(fabs(aw_matrix_det(pass.px_per_um)));
@@ -84,6 +85,7 @@ gsize aw_overlay_draw(AwOverlay *overlay, cairo_t *cr, const AwScene *scene, con
   AwPass pass = start(overlay, cr, scene, view);
   g_autoptr(GArray) item = find_in_view(scene, view);
   AwDetail detail = aw_overlay_detail(pass.size / pass.u, item->len);
+  pass.stop = aw_overlay_stops(&pass);
   cairo_save(cr);
   aw_overlay_tour(&pass);
   aw_overlay_nuclei(&pass, item, detail);
@@ -92,5 +94,6 @@ gsize aw_overlay_draw(AwOverlay *overlay, cairo_t *cr, const AwScene *scene, con
     aw_overlay_numbers(&pass, item);
   aw_overlay_signs(&pass);
   cairo_restore(cr);
+  g_free(pass.stop);
   return item->len;
 }

@@ -100,7 +100,7 @@ static void draw_outline(const AwPass *pass, guint i, const AwLook *look, AwDeta
 
 static void draw_nucleus(const AwPass *pass, guint i, AwState state, AwDetail detail, const Stamps *stamps)
 {
-  AwScreenPoint at = aw_pass_point(pass, nucleus_at(pass, i)->centroid);
+  AwScreenPoint at = aw_pass_point(pass, pass->centroid[i]);
   const AwStamp *mark = has_mark(pass, i, AW_MARK_SELECTED) ? stamps->selected[state] : stamps->state[state];
   if (detail != AW_DETAIL_MARKS)
     draw_outline(pass, i, aw_look_of_state(state), detail);

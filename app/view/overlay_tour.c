@@ -1,14 +1,17 @@
 /* Aimwell - SPDX-License-Identifier: GPL-3.0-or-later */
 #include "view/overlay_parts.h"
 
-#define MAX_SEAMED 2000 /* legs in view that get a dark seam */
+#define MAX_SEAMED 700 /* legs in view that get a dark seam */
 #define MAX_ARROWS 80
 
-static AwScreenPoint stop(const AwPass *pass, gsize i)
+AwScreenPoint *aw_overlay_stops(const AwPass *pass)
 {
-  guint nucleus = pass->scene->tour[i];
-  const AwNucleus *n = pass->scene->nuclei->pdata[nucleus];
-  return aw_pass_point(pass, pass->scene->aim ? pass->scene->aim[nucleus] : n->centroid);
+  const AwScene *scene = pass->scene;
+  AwScreenPoint *stop = scene->tour && scene->n_tour > 0 ? g_new(AwScreenPoint, scene->n_tour) : NULL;
+  const AwScanPoint *at = scene->aim ? scene->aim : pass->centroid;
+  for (gsize i = 0; stop && i < scene->n_tour; i++)
+    stop[i] = aw_pass_point(pass, at[scene->tour[i]]);
+  return stop;
 }
 
 static gboolean in_view(const AwPass *pass, AwScreenPoint a, AwScreenPoint b)
@@ -21,17 +24,17 @@ static gsize count_legs(const AwPass *pass)
 {
   gsize n = 0;
   for (gsize i = 0; i + 1 < pass->scene->n_tour; i++)
-    n += in_view(pass, stop(pass, i), stop(pass, i + 1));
+    n += in_view(pass, pass->stop[i], pass->stop[i + 1]);
   return n;
 }
 
 void aw_overlay_tour(const AwPass *pass)
 {
-  gsize n = pass->scene->tour ? pass->scene->n_tour : 0;
+  gsize n = pass->stop ? pass->scene->n_tour : 0;
   AwStroke seam = { .ink = aw_ink_casing, .width = 3 * pass->u }, line = { .width = 1.4 * pass->u };
   gboolean crowded = n > MAX_SEAMED && count_legs(pass) > MAX_SEAMED;
   for (gsize i = 0; i + 1 < n; i++) {
-    AwScreenPoint a = stop(pass, i), b = stop(pass, i + 1);
+    AwScreenPoint a = pass->stop[i], b = pass->stop[i + 1];
     if (!in_view(pass, a, b))
       continue;
     line.ink = aw_ink_tour;
@@ -60,7 +63,7 @@ static void draw_arrows(const AwPass *pass)
   gsize n_tour = pass->scene->n_tour;
   for (int round = 0; round < 2; round++) /* first measures how much is in view */
     for (gsize i = 0; i + 1 < n_tour; i++) {
-      AwScreenPoint a = stop(pass, i), b = stop(pass, i + 1);
+      AwScreenPoint a = pass->stop[i], b = pass->stop[i + 1];
       double length = hypot(b.sx - a.sx, b.sy - a.sy);
       if (!in_view(pass, a, b))
         continue;
@@ -121,11 +124,11 @@ static void draw_brackets(const AwPass *pass)
 void aw_overlay_signs(const AwPass *pass)
 {
   const AwScene *scene = pass->scene;
-  if (scene->tour && scene->n_tour > 0) {
+  if (pass->stop) {
     draw_arrows(pass);
     if (scene->n_tour > 1)
-      draw_end(pass, stop(pass, scene->n_tour - 1), FALSE);
-    draw_end(pass, stop(pass, 0), TRUE);
+      draw_end(pass, pass->stop[scene->n_tour - 1], FALSE);
+    draw_end(pass, pass->stop[0], TRUE);
   }
   if (scene->current >= 0 && (guint)scene->current < scene->nuclei->len)
     draw_brackets(pass);

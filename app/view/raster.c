@@ -4,18 +4,23 @@
 #include <math.h>
 #include <string.h>
 
-#define SEAM 1.0 /* dark rim of a stamp, px */
+#include "base/point.h"
+
+#define SEAM 1.0       /* dark rim of a stamp, px */
+#define SMALL_SEAM 0.6 /* of stamps under 2 px */
 
 struct AwRaster {
   cairo_surface_t *surface;
   int width, height;
   gsize stride; /* in pixels */
   guint32 *pixels;
+  AwRect touched; /* what was drawn on since the last begin; empty when x0 >= x1 */
 };
 
 struct AwStamp {
   int side; /* odd */
   guint32 *pixels;
+  int *first, *last; /* of each row: the columns first <= x < last hold ink */
 };
 
 AwRaster *aw_raster_new(void)
@@ -31,13 +36,34 @@ void aw_raster_free(AwRaster *raster)
   g_free(raster);
 }
 
+static void wipe(AwRaster *raster)
+{
+  AwRect t = raster->touched;
+  cairo_surface_flush(raster->surface);
+  for (int y = t.y0; y < t.y1 && t.x0 < t.x1; y++)
+    memset(raster->pixels + (gsize)y * raster->stride + t.x0, 0, (gsize)(t.x1 - t.x0) * sizeof(guint32));
+  raster->touched = (AwRect){ raster->width, raster->height, 0, 0 };
+}
+
+/* Notes that pixels x0 <= x < x1, y0 <= y < y1 may be drawn on; those outside the layer do not count. */
+static void touch(AwRaster *raster, double x0, double y0, double x1, double y1)
+{
+  AwRect *t = &raster->touched;
+  t->x0 = MIN(t->x0, (int)MAX(x0, 0));
+  t->y0 = MIN(t->y0, (int)MAX(y0, 0));
+  t->x1 = MAX(t->x1, (int)MIN(x1, raster->width));
+  t->y1 = MAX(t->y1, (int)MIN(y1, raster->height));
+}
+
 gboolean aw_raster_begin(AwRaster *raster, int width, int height)
 {
   g_return_val_if_fail(raster && width > 0 && height > 0, FALSE);
-  if (!raster->surface || raster->width != width || raster->height != height) {
-    g_clear_pointer(&raster->surface, cairo_surface_destroy);
-    raster->surface = cairo_image_surface_create(CAIRO_FORMAT_ARGB32, width, height);
+  if (raster->surface && raster->width == width && raster->height == height) {
+    wipe(raster);
+    return TRUE;
   }
+  g_clear_pointer(&raster->surface, cairo_surface_destroy);
+  raster->surface = cairo_image_surface_create(CAIRO_FORMAT_ARGB32, width, height); /* all clear */
   if (cairo_surface_status(raster->surface) != CAIRO_STATUS_SUCCESS) {
     g_clear_pointer(&raster->surface, cairo_surface_destroy);
     return FALSE;
@@ -47,7 +73,7 @@ gboolean aw_raster_begin(AwRaster *raster, int width, int height)
   raster->stride = (gsize)cairo_image_surface_get_stride(raster->surface) / sizeof(guint32);
   cairo_surface_flush(raster->surface);
   raster->pixels = (guint32 *)(void *)cairo_image_surface_get_data(raster->surface);
-  memset(raster->pixels, 0, raster->stride * (gsize)height * sizeof(guint32));
+  raster->touched = (AwRect){ width, height, 0, 0 };
   return TRUE;
 }
 
@@ -55,8 +81,10 @@ void aw_raster_paint(const AwRaster *raster, cairo_t *cr)
 {
   g_return_if_fail(raster->surface);
   cairo_surface_mark_dirty(raster->surface);
+  AwRect t = raster->touched;
   cairo_set_source_surface(cr, raster->surface, 0, 0);
-  cairo_paint(cr);
+  cairo_rectangle(cr, t.x0, t.y0, MAX(t.x1 - t.x0, 0), MAX(t.y1 - t.y0, 0));
+  cairo_fill(cr);
 }
 
 /* Products of two bytes over 255, rounded, for two bytes at once (Blinn 1994). */
@@ -74,15 +102,23 @@ static guint32 scale_pixel(guint32 pixel, guint32 by)
 /* Porter & Duff's "over", premultiplied. */
 static void over(guint32 *at, guint32 ink)
 {
-  *at = ink + scale_pixel(*at, 255 - (ink >> 24));
+  if (*at == 0 || ink >= 0xff000000)
+    *at = ink;
+  else
+    *at = ink + scale_pixel(*at, 255 - (ink >> 24));
 }
 
 /* A dark disc behind the glyph; behind a plus, which often stands on another glyph, only a dark shape of it. */
+static double seam_of(double r)
+{
+  return r < 2 ? SMALL_SEAM : SEAM;
+}
+
 static void draw_seam(cairo_t *cr, AwGlyph glyph, double middle, double r)
 {
   aw_style_set_ink(cr, aw_ink_casing);
   if (glyph != AW_GLYPH_PLUS) {
-    cairo_arc(cr, middle, middle, r + SEAM, 0, 2 * G_PI);
+    cairo_arc(cr, middle, middle, r + seam_of(r), 0, 2 * G_PI);
     cairo_fill(cr);
     return;
   }
@@ -90,11 +126,27 @@ static void draw_seam(cairo_t *cr, AwGlyph glyph, double middle, double r)
     aw_style_draw_glyph(cr, glyph, middle + (k & 1 ? 0.7 : -0.7), middle + (k & 2 ? 0.7 : -0.7), r);
 }
 
+static void find_spans(AwStamp *stamp)
+{
+  stamp->first = g_new0(int, stamp->side);
+  stamp->last = g_new0(int, stamp->side);
+  for (int y = 0; y < stamp->side; y++) {
+    const guint32 *row = stamp->pixels + y * stamp->side;
+    int first = 0, last = stamp->side;
+    while (first < last && row[first] == 0)
+      first++;
+    while (last > first && row[last - 1] == 0)
+      last--;
+    stamp->first[y] = first;
+    stamp->last[y] = last;
+  }
+}
+
 AwStamp *aw_stamp_new(AwGlyph glyph, AwInk ink, double r)
 {
   g_return_val_if_fail(r > 0 && r < 100, NULL);
   AwStamp *stamp = g_new0(AwStamp, 1);
-  stamp->side = 2 * (int)ceil(r + SEAM) + 1;
+  stamp->side = 2 * (int)ceil(r + seam_of(r) - 0.5) + 1;
   cairo_surface_t *surface = cairo_image_surface_create(CAIRO_FORMAT_ARGB32, stamp->side, stamp->side);
   cairo_t *cr = cairo_create(surface);
   double middle = stamp->side / 2.0;
@@ -108,6 +160,7 @@ AwStamp *aw_stamp_new(AwGlyph glyph, AwInk ink, double r)
   for (gsize y = 0; y < side; y++)
     memcpy(stamp->pixels + y * side, cairo_image_surface_get_data(surface) + y * stride, side * sizeof(guint32));
   cairo_surface_destroy(surface);
+  find_spans(stamp);
   return stamp;
 }
 
@@ -116,6 +169,8 @@ void aw_stamp_free(AwStamp *stamp)
   if (!stamp)
     return;
   g_free(stamp->pixels);
+  g_free(stamp->first);
+  g_free(stamp->last);
   g_free(stamp);
 }
 
@@ -124,14 +179,14 @@ void aw_raster_stamp(AwRaster *raster, const AwStamp *stamp, double x, double y)
   if (!(x > -100 && x < raster->width + 100 && y > -100 && y < raster->height + 100))
     return;
   int left = (int)floor(x) - stamp->side / 2, top = (int)floor(y) - stamp->side / 2;
-  int x0 = MAX(left, 0), x1 = MIN(left + stamp->side, raster->width);
   int y0 = MAX(top, 0), y1 = MIN(top + stamp->side, raster->height);
+  touch(raster, left, top, left + stamp->side, top + stamp->side);
   for (int row = y0; row < y1; row++) {
+    int x0 = MAX(left + stamp->first[row - top], 0), x1 = MIN(left + stamp->last[row - top], raster->width);
     guint32 *to = raster->pixels + (gsize)row * raster->stride;
     const guint32 *from = stamp->pixels + (row - top) * stamp->side - left;
     for (int column = x0; column < x1; column++)
-      if (from[column])
-        over(&to[column], from[column]);
+      over(&to[column], from[column]);
   }
 }
 
@@ -188,17 +243,25 @@ static guint32 *pixel_on(AwRaster *raster, const Track *track, int i, int across
   return raster->pixels + (gsize)y * raster->stride + x;
 }
 
+/* floor() for small numbers, without a call. */
+static inline int whole(double v)
+{
+  int i = (int)v;
+  return i - (v < i);
+}
+
 /* A pixel is covered by how far its centre lies inside the line's edge, and by how much of its step the line runs
  * through: Wu's hairline (1991) for any width. */
 static void cover_step(AwRaster *raster, const Track *track, int i, double half, guint32 ink)
 {
   double share = MIN(track->last, i + 0.5) - MAX(track->first, i - 0.5);
   double middle = track->at + (i - track->from) * track->slope;
-  for (int across = (int)ceil(middle - half - 1); across <= (int)floor(middle + half + 1); across++) {
-    double cover = CLAMP(half + 0.5 - fabs(across - middle), 0, 1) * share;
-    guint32 *pixel = pixel_on(raster, track, i, across);
-    if (pixel && cover > 0)
-      over(pixel, scale_pixel(ink, (guint32)(MIN(cover, 1) * 255 + 0.5)));
+  int last = whole(middle + half + 0.5);
+  for (int across = whole(middle - half + 0.5); across <= last; across++) {
+    double cover = MIN(half + 0.5 - fabs(across - middle), 1) * share;
+    guint32 *pixel = cover > 0 ? pixel_on(raster, track, i, across) : NULL;
+    if (pixel)
+      over(pixel, scale_pixel(ink, (guint32)(cover * 255 + 0.5)));
   }
 }
 
@@ -216,7 +279,10 @@ void aw_raster_line(AwRaster *raster, const AwStroke *stroke, double x0, double 
   Track track = track_of(p);
   double half = MAX(stroke->width, 1) / 2 * sqrt(1 + track.slope * track.slope);
   guint32 ink = premultiplied(stroke->ink);
-  for (int i = (int)floor(track.first + 0.5); i <= (int)floor(track.last + 0.5); i++)
+  touch(raster, MIN(p[0], p[2]) - half - 1, MIN(p[1], p[3]) - half - 1, MAX(p[0], p[2]) + half + 2,
+        MAX(p[1], p[3]) + half + 2);
+  int last = whole(track.last + 0.5);
+  for (int i = whole(track.first + 0.5); i <= last; i++)
     cover_step(raster, &track, i, half, ink);
 }
 

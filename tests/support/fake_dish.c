@@ -136,6 +136,28 @@ static void scatter(FakeDish *dish, const FakeDishSettings *s)
   }
 }
 
+static int by_place(gconstpointer a, gconstpointer b)
+{
+  const AwNucleus *x = *(AwNucleus *const *)a, *y = *(AwNucleus *const *)b;
+  if (x->frame != y->frame)
+    return x->frame - y->frame;
+  return x->centroid.y_um < y->centroid.y_um ? -1 : x->centroid.y_um > y->centroid.y_um;
+}
+
+/* Numbers nuclei as a scan does: frame by frame, row by row. */
+static void number(FakeDish *dish, const FakeDishSettings *s)
+{
+  double step = s->side_px * s->um_per_px * (1 - s->overlap_frac);
+  for (guint i = 0; i < dish->nuclei->len; i++) {
+    AwNucleus *n = dish->nuclei->pdata[i];
+    int column = (int)((n->centroid.x_um - 12000) / step + 0.5), row = (int)((n->centroid.y_um + 4000) / step + 0.5);
+    n->frame = row * s->n_across + column;
+  }
+  g_ptr_array_sort(dish->nuclei, by_place);
+  for (guint i = 0; i < dish->nuclei->len; i++)
+    ((AwNucleus *)dish->nuclei->pdata[i])->id = i + 1;
+}
+
 static void decide(FakeDish *dish, guint64 seed)
 {
   AwRandom r = aw_random_stream(seed, 1);
@@ -186,6 +208,7 @@ FakeDish *fake_dish_new(const FakeDishSettings *s)
   dish->tour = g_array_new(FALSE, FALSE, sizeof(gint64));
   add_frames(dish, s);
   scatter(dish, s);
+  number(dish, s);
   if (s->overview_px > 0)
     fake_dish_paint(dish, s->overview_px);
   decide(dish, s->seed);
