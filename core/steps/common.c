@@ -1,6 +1,8 @@
 /* Aimwell - SPDX-License-Identifier: GPL-3.0-or-later */
 #include "steps/common.h"
 
+#include <string.h>
+
 #include "nuclei/scan.h"
 
 void aw_step_warn(const AwStepContext *context, const char *format, ...)
@@ -23,6 +25,23 @@ AwRecord *aw_step_open(const char *path, const AwStepContext *context, GError **
   if (!aw_record_begin(record, context->who, error))
     return NULL;
   return g_steal_pointer(&record);
+}
+
+char *aw_step_name(const AwRecord *record)
+{
+  char *name = g_path_get_basename(aw_record_path(record));
+  if (g_str_has_suffix(name, ".dish"))
+    name[strlen(name) - strlen(".dish")] = '\0';
+  return name;
+}
+
+gboolean aw_step_n_particles(AwRecord *record, gint64 *n_particles, GError **error)
+{
+  double n;
+  if (!aw_record_fact_double(record, AW_FACT_N_PARTICLES, 1, &n, error))
+    return FALSE;
+  *n_particles = (gint64)n;
+  return TRUE;
 }
 
 char *aw_step_folder(const AwRecord *record)
