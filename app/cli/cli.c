@@ -43,8 +43,8 @@ static gboolean check_common(const char *command, const CliCommon *common)
   return TRUE;
 }
 
-gboolean cli_parse(int argc, char **argv, const char *usage, const char *summary, const GOptionEntry *own,
-                   guint shared, CliCommon *common)
+gboolean cli_parse(int argc, char **argv, const char *usage, const char *summary, const GOptionEntry *own, guint shared,
+                   CliCommon *common)
 {
   const GOptionEntry who[] = {
     { "who", 0, 0, G_OPTION_ARG_STRING, &common->who, "Operator for the journal (default: the login)", "NAME" }, { 0 }

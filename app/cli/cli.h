@@ -43,8 +43,8 @@ typedef enum { CLI_NO_SHARED = 0, CLI_WHO = 1 << 0, CLI_THREADS = 1 << 1 } CliSh
  * Parses options by GOption. `usage` follows the command's name in the help ("NAME.dish [--json]"), `summary` is
  * its text. FALSE after a message on stderr; the caller then returns CLI_USAGE.
  */
-gboolean cli_parse(int argc, char **argv, const char *usage, const char *summary, const GOptionEntry *own,
-                   guint shared, CliCommon *common);
+gboolean cli_parse(int argc, char **argv, const char *usage, const char *summary, const GOptionEntry *own, guint shared,
+                   CliCommon *common);
 
 /* A step's context with the terminal's progress line and Ctrl-C wired up. Ends with cli_context_finish. */
 void cli_context_init(AwStepContext *context, const CliCommon *common);

@@ -9,11 +9,10 @@ int cli_export(int argc, char **argv)
 {
   g_auto(CliCommon) common = { 0 };
   g_autofree char *out = NULL, *layout = NULL;
-  const GOptionEntry own[] = {
-    { "output", 'o', 0, G_OPTION_ARG_FILENAME, &out, "Where the target list goes", "FILE" },
-    { "layout", 0, 0, G_OPTION_ARG_FILENAME, &layout, "csv (default), tsv, or a layout file", "NAME|FILE" },
-    { 0 }
-  };
+  const GOptionEntry own[] = { { "output", 'o', 0, G_OPTION_ARG_FILENAME, &out, "Where the target list goes", "FILE" },
+                               { "layout", 0, 0, G_OPTION_ARG_FILENAME, &layout, "csv (default), tsv, or a layout file",
+                                 "NAME|FILE" },
+                               { 0 } };
   if (!cli_parse(argc, argv, "NAME.dish -o FILE [--layout NAME|FILE]",
                  "Writes the target list, reads it back and compares every position with the plan.", own, CLI_WHO,
                  &common) ||

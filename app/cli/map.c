@@ -9,14 +9,13 @@ int cli_map(int argc, char **argv)
   g_auto(CliCommon) common = { 0 };
   g_autofree char *out = NULL;
   gint width = 2400, height = 1800;
-  const GOptionEntry own[] = {
-    { "output", 'o', 0, G_OPTION_ARG_FILENAME, &out, "Where the map goes; .png, .svg or .pdf", "FILE.png" },
-    { "width", 0, 0, G_OPTION_ARG_INT, &width, "Width in pixels (default 2400)", "PX" },
-    { "height", 0, 0, G_OPTION_ARG_INT, &height, "Height in pixels (default 1800)", "PX" },
-    { 0 }
-  };
-  if (!cli_parse(argc, argv, "NAME.dish -o FILE.png", "Draws frames, nuclei by state, and the tour.", own, CLI_NO_SHARED,
-                 &common) ||
+  const GOptionEntry own[] = { { "output", 'o', 0, G_OPTION_ARG_FILENAME, &out,
+                                 "Where the map goes; .png, .svg or .pdf", "FILE.png" },
+                               { "width", 0, 0, G_OPTION_ARG_INT, &width, "Width in pixels (default 2400)", "PX" },
+                               { "height", 0, 0, G_OPTION_ARG_INT, &height, "Height in pixels (default 1800)", "PX" },
+                               { 0 } };
+  if (!cli_parse(argc, argv, "NAME.dish -o FILE.png", "Draws frames, nuclei by state, and the tour.", own,
+                 CLI_NO_SHARED, &common) ||
       !cli_need_words("map", &common, 1, "NAME.dish"))
     return CLI_USAGE;
   if (!out)

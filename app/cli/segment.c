@@ -166,7 +166,8 @@ int cli_segment(int argc, char **argv)
     { "channel", 0, 0, G_OPTION_ARG_INT, &o.channel, "Loose images: channel, from 0", "K" },
     { "nucleus-width-um", 0, 0, G_OPTION_ARG_STRING, &o.width, "Typical nucleus diameter (default: estimated)", "UM" },
     { "sensitivity", 0, 0, G_OPTION_ARG_STRING, &o.sensitivity, "-1 to 1: above 0 finds dimmer nuclei", "S" },
-    { "splitting", 0, 0, G_OPTION_ARG_STRING, &o.splitting, "-1 to 1: above 0 parts touching nuclei more readily", "S" },
+    { "splitting", 0, 0, G_OPTION_ARG_STRING, &o.splitting, "-1 to 1: above 0 parts touching nuclei more readily",
+      "S" },
     { "pixel-map", 0, 0, G_OPTION_ARG_STRING, &o.map, "Dish: enter the map A, um per px, instead of fitting it",
       "AXX,AXY,AYX,AYY" },
     { 0 }

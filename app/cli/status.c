@@ -50,8 +50,8 @@ static void report_plan(const AwStatus *s)
     cli_print("Gate     %s\n", (const char *)s->gates->pdata[i]);
   if (s->n_tour) {
     g_autofree char *length = cli_length(s->tour_um);
-    cli_print("Tour     %" G_GSIZE_FORMAT " targets, %s of stage travel, %" G_GINT64_FORMAT " particles each\n", s->n_tour,
-              length, s->n_particles);
+    cli_print("Tour     %" G_GSIZE_FORMAT " targets, %s of stage travel, %" G_GINT64_FORMAT " particles each\n",
+              s->n_tour, length, s->n_particles);
     cli_print("Plan     %s\n", s->plan_hash);
   } else {
     cli_print("Tour     none yet\n");
@@ -73,12 +73,10 @@ int cli_status(int argc, char **argv)
 {
   g_auto(CliCommon) common = { 0 };
   gboolean json = FALSE, verify = FALSE;
-  const GOptionEntry own[] = {
-    { "json", 0, 0, G_OPTION_ARG_NONE, &json, "Print as JSON", NULL },
-    { "verify", 0, 0, G_OPTION_ARG_NONE, &verify, "Hash every image and check the record itself; fails on a difference",
-      NULL },
-    { 0 }
-  };
+  const GOptionEntry own[] = { { "json", 0, 0, G_OPTION_ARG_NONE, &json, "Print as JSON", NULL },
+                               { "verify", 0, 0, G_OPTION_ARG_NONE, &verify,
+                                 "Hash every image and check the record itself; fails on a difference", NULL },
+                               { 0 } };
   if (!cli_parse(argc, argv, "NAME.dish [--json] [--verify]", "Shows a dish at a glance.", own, CLI_THREADS, &common) ||
       !cli_need_words("status", &common, 1, "NAME.dish"))
     return CLI_USAGE;

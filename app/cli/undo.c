@@ -14,9 +14,8 @@ int cli_undo(int argc, char **argv)
   g_auto(CliCommon) common = { 0 };
   g_autofree char *what = NULL;
   gboolean redo = FALSE;
-  const GOptionEntry own[] = {
-    { "redo", 0, 0, G_OPTION_ARG_NONE, &redo, "Do the newest undone action again", NULL }, { 0 }
-  };
+  const GOptionEntry own[] = { { "redo", 0, 0, G_OPTION_ARG_NONE, &redo, "Do the newest undone action again", NULL },
+                               { 0 } };
   if (!cli_parse(argc, argv, "NAME.dish [--redo]", "Takes the newest action back, as a new journalled action.", own,
                  CLI_WHO, &common) ||
       !cli_need_words("undo", &common, 1, "NAME.dish"))

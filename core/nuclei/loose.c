@@ -7,13 +7,13 @@
 static AwScanSettings loose_settings(const AwLooseImage *image, const AwSegmentSettings *segment)
 {
   double scale = image->pixel_um > 0 ? image->pixel_um : 1;
-  return (AwScanSettings){ .segment = *segment,
-                           .n_threads = 1,
-                           .pixel_um = scale,
-                           .map = { { -scale, 0, 0, -scale }, AW_ORIGIN_ENTERED, 0 } };
+  return (AwScanSettings){
+    .segment = *segment, .n_threads = 1, .pixel_um = scale, .map = { { -scale, 0, 0, -scale }, AW_ORIGIN_ENTERED, 0 }
+  };
 }
 
-GPtrArray *aw_segment_file(const AwLooseImage *image, const AwSegmentSettings *segment, AwImageInfo *info, GError **error)
+GPtrArray *aw_segment_file(const AwLooseImage *image, const AwSegmentSettings *segment, AwImageInfo *info,
+                           GError **error)
 {
   g_autoptr(AwImageReader) reader = aw_image_reader_open(image->path, image->page, image->channel, error);
   if (!reader)

@@ -56,7 +56,8 @@ static gboolean fill_rows(AwPlan *plan, GPtrArray *nuclei, const GArray *tour, g
     gint64 id = g_array_index(tour, gint64, i);
     const AwNucleus *nucleus = find_nucleus(nuclei, id);
     if (!nucleus) {
-      g_set_error(error, AW_ERROR, AW_ERROR_STATE, "the tour names nucleus %" G_GINT64_FORMAT ", which does not exist", id);
+      g_set_error(error, AW_ERROR, AW_ERROR_STATE, "the tour names nucleus %" G_GINT64_FORMAT ", which does not exist",
+                  id);
       return FALSE;
     }
     plan->rows[i] = (AwTargetRow){ .target = (gint64)i + 1,
@@ -78,7 +79,8 @@ static gboolean explain_no_tour(AwRecord *record, GError **error)
   for (guint i = 0; i < decisions->len; i++)
     n_accepted += g_array_index(decisions, AwDecision, i).state == AW_STATE_ACCEPTED;
   if (n_accepted)
-    g_set_error(error, AW_ERROR, AW_ERROR_STATE, "%s has %" G_GSIZE_FORMAT " targets but no tour; order them first (aimwell route %s)",
+    g_set_error(error, AW_ERROR, AW_ERROR_STATE,
+                "%s has %" G_GSIZE_FORMAT " targets but no tour; order them first (aimwell route %s)",
                 aw_record_path(record), n_accepted, aw_record_path(record));
   else
     g_set_error(error, AW_ERROR, AW_ERROR_EMPTY, "%s has no target: no nucleus is accepted", aw_record_path(record));
@@ -115,7 +117,7 @@ gboolean aw_step_export(const char *path, const char *out, const char *layout_na
     return FALSE;
   summary->n_targets = plan->n;
   g_strlcpy(summary->plan_hash, plan->plan_hash, sizeof summary->plan_hash);
-  g_autofree char *action = g_strdup_printf("exported %" G_GSIZE_FORMAT " targets to %s in layout %s, plan %s", plan->n, out,
-                                            layout_name, plan->plan_hash);
+  g_autofree char *action = g_strdup_printf("exported %" G_GSIZE_FORMAT " targets to %s in layout %s, plan %s", plan->n,
+                                            out, layout_name, plan->plan_hash);
   return aw_record_commit(record, action, error);
 }

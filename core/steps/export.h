@@ -9,8 +9,8 @@
 typedef struct {
   AwTargetRow *rows; /* owned */
   gsize n;
-  char *plan_hash;   /* owned */
-  char *origin;      /* owned */
+  char *plan_hash; /* owned */
+  char *origin;    /* owned */
 } AwPlan;
 
 void aw_plan_free(AwPlan *plan);

@@ -45,8 +45,8 @@ static gboolean check_names(const AwLooseSettings *s, GError **error)
     char *name = image_name(s->images[i]);
     const char *before = g_hash_table_lookup(seen, name);
     if (before) {
-      g_set_error(error, AW_ERROR, AW_ERROR_STATE, "%s and %s would both write %s/%s.tif; segment them separately", before,
-                  s->images[i], s->labels_folder, name);
+      g_set_error(error, AW_ERROR, AW_ERROR_STATE, "%s and %s would both write %s/%s.tif; segment them separately",
+                  before, s->images[i], s->labels_folder, name);
       g_free(name);
       return FALSE;
     }

@@ -15,7 +15,8 @@ typedef struct {
   gboolean gated;            /* only nuclei inside the default gates */
 } AwLooseSettings;
 
-/* Segments loose images (no record). n_nuclei gets the number written. Outputs appear whole or not at all, image by image. */
+/* Segments loose images (no record). n_nuclei gets the number written. Outputs appear whole or not at all, image by
+ * image. */
 gboolean aw_step_segment_loose(const AwLooseSettings *settings, const AwStepContext *context, gsize *n_nuclei,
                                GError **error);
 

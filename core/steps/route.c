@@ -58,10 +58,9 @@ static gboolean store_tour(AwRecord *record, const AwTour *tour, const GArray *i
   for (gsize i = 0; i < tour->n; i++)
     ordered[i] = g_array_index(ids, gint64, tour->order[i]);
   g_autofree char *budget = aw_text_from_double(settings->budget_s, 3);
-  g_autofree char *how =
-      settings->budget_s > 0
-          ? g_strdup_printf("searched for %s s, not repeatable", budget)
-          : g_strdup_printf("%" G_GINT64_FORMAT " steps, seed %" G_GUINT64_FORMAT, tour->n_steps_used, settings->seed);
+  g_autofree char *how = settings->budget_s > 0 ? g_strdup_printf("searched for %s s, not repeatable", budget)
+                                                : g_strdup_printf("%" G_GINT64_FORMAT " steps, seed %" G_GUINT64_FORMAT,
+                                                                  tour->n_steps_used, settings->seed);
   return aw_record_set_tour(record, ordered, tour->n, error) &&
          aw_record_set_fact_double(record, AW_FACT_TOUR_UM, tour->final, error) &&
          aw_record_set_fact(record, AW_FACT_TOUR_HOW, how, error);
@@ -93,8 +92,7 @@ gboolean aw_step_route_points(const char *points, const char *out, const AwRoute
   if (!table)
     return FALSE;
   AwTourSettings how = tour_settings(settings);
-  g_autoptr(AwTour) tour =
-      aw_tour_find(aw_points_stops(table), aw_points_n(table), &how, context->progress, error);
+  g_autoptr(AwTour) tour = aw_tour_find(aw_points_stops(table), aw_points_n(table), &how, context->progress, error);
   if (!tour)
     return FALSE;
   aw_points_warn_duplicates(table, context->warnings);

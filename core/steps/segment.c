@@ -108,7 +108,8 @@ static void summarise(const AwScanResult *scan, AwSegmentSummary *s)
 }
 
 /* Reads, segments and numbers; the record is still as it was. */
-static AwScanResult *find_nuclei(AwRecord *record, const AwSegmentStep *step, const AwStepContext *context, GError **error)
+static AwScanResult *find_nuclei(AwRecord *record, const AwSegmentStep *step, const AwStepContext *context,
+                                 GError **error)
 {
   AwScanSettings settings;
   if (!scan_settings(record, step, context, &settings, error))
@@ -118,10 +119,11 @@ static AwScanResult *find_nuclei(AwRecord *record, const AwSegmentStep *step, co
     return NULL;
   g_autoptr(GPtrArray) paths = NULL;
   g_autoptr(GArray) list = aw_step_scan_frames(record, frames, &paths);
-  g_autoptr(AwScanResult) scan = aw_scan_segment((const AwScanFrame *)(const void *)list->data, list->len, &settings,
-                                                 context->progress, error);
+  g_autoptr(AwScanResult) scan =
+      aw_scan_segment((const AwScanFrame *)(const void *)list->data, list->len, &settings, context->progress, error);
   if (scan && !scan->nuclei->len) {
-    g_set_error(error, AW_ERROR, AW_ERROR_EMPTY, "%s: no nucleus was found in %u frames", aw_record_path(record), list->len);
+    g_set_error(error, AW_ERROR, AW_ERROR_EMPTY, "%s: no nucleus was found in %u frames", aw_record_path(record),
+                list->len);
     return NULL;
   }
   return g_steal_pointer(&scan);
@@ -140,7 +142,7 @@ gboolean aw_step_segment(const char *path, const AwSegmentStep *step, const AwSt
       !aw_record_set_nuclei(record, scan->nuclei, error) || !store_facts(record, step, scan, error))
     return FALSE;
   summarise(scan, summary);
-  g_autofree char *action = g_strdup_printf("found %u nuclei in the scan; %u decisions lost", scan->nuclei->len,
-                                            summary->lost->len);
+  g_autofree char *action =
+      g_strdup_printf("found %u nuclei in the scan; %u decisions lost", scan->nuclei->len, summary->lost->len);
   return !aw_progress_stopped(context->progress, error) && aw_record_commit(record, action, error);
 }

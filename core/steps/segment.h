@@ -6,7 +6,7 @@
 #include "steps/common.h"
 
 typedef struct {
-  double nucleus_width_um; /* 0: estimated from the images */
+  double nucleus_width_um;       /* 0: estimated from the images */
   double sensitivity, splitting; /* as in AwSegmentSettings */
   const AwMatrix *pixel_map;     /* entered A, or NULL: fitted from the overlaps, else assumed */
 } AwSegmentStep;
@@ -14,10 +14,10 @@ typedef struct {
 typedef struct {
   gsize n_nuclei, n_border, n_saturated, n_defocused, n_touching;
   double nucleus_width_um;
-  gsize n_kept;      /* decisions by hand kept on nuclei that are the same */
-  GArray *lost;      /* gint64 ids whose decision could not be kept; owned by the summary */
+  gsize n_kept; /* decisions by hand kept on nuclei that are the same */
+  GArray *lost; /* gint64 ids whose decision could not be kept; owned by the summary */
   AwPixelMap map;
-  char *map_note;    /* owned */
+  char *map_note; /* owned */
   gsize n_overlap_pairs;
   double overlap_rms_um;
 } AwSegmentSummary;

@@ -9,17 +9,17 @@ typedef struct {
   char *name, *created_at; /* owned */
   gsize n_frames;
   AwPixelMap map;
-  char *map_note;          /* owned, may be NULL */
+  char *map_note; /* owned, may be NULL */
   gsize n_nuclei;
-  gsize n_state[4];        /* by AwState */
-  GPtrArray *gates;        /* char *, owned */
-  gsize n_tour;            /* targets in the tour; 0 when there is none */
+  gsize n_state[4]; /* by AwState */
+  GPtrArray *gates; /* char *, owned */
+  gsize n_tour;     /* targets in the tour; 0 when there is none */
   double tour_um;
   gint64 n_particles;
-  char *plan_hash;         /* owned, NULL without a tour */
+  char *plan_hash; /* owned, NULL without a tour */
   gsize n_journal;
-  GPtrArray *changed;      /* char *: sentences on images that are missing or changed, owned */
-  double scan_age_s;       /* since the oldest taken_at; NaN unknown */
+  GPtrArray *changed; /* char *: sentences on images that are missing or changed, owned */
+  double scan_age_s;  /* since the oldest taken_at; NaN unknown */
 } AwStatus;
 
 void aw_status_free(AwStatus *status);

@@ -23,10 +23,9 @@ static char *summarise(const AwDishView *view)
   gsize n[4] = { 0 };
   for (guint i = 0; i < view->nuclei->len; i++)
     n[view->state[i]]++;
-  return g_strdup_printf("%u frames, %u nuclei: %" G_GSIZE_FORMAT " accepted, %" G_GSIZE_FORMAT
-                         " proposed, %" G_GSIZE_FORMAT " rejected",
-                         view->frames->len, view->nuclei->len, n[AW_STATE_ACCEPTED], n[AW_STATE_PROPOSED],
-                         n[AW_STATE_REJECTED]);
+  return g_strdup_printf(
+      "%u frames, %u nuclei: %" G_GSIZE_FORMAT " accepted, %" G_GSIZE_FORMAT " proposed, %" G_GSIZE_FORMAT " rejected",
+      view->frames->len, view->nuclei->len, n[AW_STATE_ACCEPTED], n[AW_STATE_PROPOSED], n[AW_STATE_REJECTED]);
 }
 
 static GPtrArray *collect_notes(const AwDishView *view, char *map_note)
@@ -51,8 +50,7 @@ AwDishView *aw_step_view(const char *path, GError **error)
   view->name = aw_step_name(record);
   if (!(view->frames = aw_record_frames(record, error)) || !aw_record_pixel_map(record, &view->map, error) ||
       !(view->nuclei = aw_record_nuclei(record, TRUE, error)) ||
-      !(view->state = aw_step_states(record, view->nuclei, error)) ||
-      !(view->tour = aw_record_tour(record, error)))
+      !(view->state = aw_step_states(record, view->nuclei, error)) || !(view->tour = aw_record_tour(record, error)))
     return NULL;
   char *map_note = aw_record_fact(record, AW_FACT_MAP_NOTE, &failure);
   if (failure) {

@@ -7,12 +7,12 @@
 /* All that a picture of a dish needs, read in one go. */
 typedef struct {
   char *name, *summary;
-  GPtrArray *frames;  /* AwFrame */
+  GPtrArray *frames; /* AwFrame */
   AwPixelMap map;
-  GPtrArray *nuclei;  /* AwNucleus with shapes */
-  AwState *state;     /* one per nucleus */
-  GArray *tour;       /* gint64 nucleus ids */
-  GPtrArray *notes;   /* char *, NULL-terminated: pixel map, first caution */
+  GPtrArray *nuclei; /* AwNucleus with shapes */
+  AwState *state;    /* one per nucleus */
+  GArray *tour;      /* gint64 nucleus ids */
+  GPtrArray *notes;  /* char *, NULL-terminated: pixel map, first caution */
 } AwDishView;
 
 void aw_dish_view_free(AwDishView *view);
