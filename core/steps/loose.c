@@ -81,7 +81,7 @@ static void write_rows(Slot *slot, const char *path, GPtrArray *nuclei, gboolean
 static void apply_gates(GPtrArray *nuclei)
 {
   gsize n_gates;
-  const AwGate *gates = aw_gates_default(&n_gates);
+  g_autofree AwGate *gates = aw_gates_default(&n_gates);
   for (guint i = nuclei->len; i-- > 0;)
     if (!aw_gates_pass(gates, n_gates, AW_GATES_DEFAULT_REFUSED, nuclei->pdata[i]))
       g_ptr_array_remove_index(nuclei, i);
