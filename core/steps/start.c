@@ -13,8 +13,6 @@
 #include "record/files.h"
 
 #define OVERVIEW_SIDE_PX 512
-#define LOW_PERCENT 1.0
-#define HIGH_PERCENT 99.8
 
 /* The scan on its way into the record; item i of every array is frame i. */
 typedef struct {
@@ -23,10 +21,14 @@ typedef struct {
   GPtrArray *frames;  /* AwFrame */
   char *folder;       /* of the record */
   double *low, *high; /* contrast range of each frame */
+  AwImage **small;    /* shrunk planes until the common contrast is known */
 } Scan;
 
 static void scan_clear(Scan *scan)
 {
+  for (guint i = 0; scan->small && i < scan->rows->len; i++)
+    aw_image_free(scan->small[i]);
+  g_free(scan->small);
   g_clear_pointer(&scan->rows, g_ptr_array_unref);
   g_clear_pointer(&scan->frames, g_ptr_array_unref);
   g_free(scan->folder);
@@ -86,22 +88,22 @@ static void fill_frame(AwFrame *frame, const AwScanRow *row, const AwImageInfo *
   frame->taken_at_unix_s = isnan(row->taken_at_unix_s) ? info->taken_at_unix_s : row->taken_at_unix_s;
 }
 
-/* Reads one image, hashes it and measures its contrast. */
+/* Reads one image, hashes it, shrinks it and measures its contrast. */
 static gboolean take_frame(gsize item, guint worker, gpointer data, GError **error)
 {
   (void)worker;
   Scan *scan = data;
   AwScanRow *row = scan->rows->pdata[item];
   AwFrame *frame = scan->frames->pdata[item];
-  AwImageInfo info;
   int channel = row->channel >= 0 ? row->channel : scan->settings->channel;
-  g_autoptr(AwImage) image = aw_image_load(row->path, row->page, channel, &info, error);
-  if (!image || !need_position(row, &info, error))
+  g_autoptr(AwImageReader) reader = aw_image_reader_open(row->path, row->page, channel, error);
+  if (!reader || !need_position(row, aw_image_reader_info(reader), error))
     return FALSE;
-  fill_frame(frame, row, &info, scan->settings);
+  fill_frame(frame, row, aw_image_reader_info(reader), scan->settings);
   frame->file = aw_file_relative(scan->folder, row->path);
-  aw_image_percentiles(image, LOW_PERCENT, HIGH_PERCENT, &scan->low[item], &scan->high[item]);
-  return aw_file_identify(row->path, frame, error);
+  scan->small[item] = aw_image_reader_shrink(reader, OVERVIEW_SIDE_PX, error);
+  return scan->small[item] && aw_image_contrast(scan->small[item], &scan->low[item], &scan->high[item], error) &&
+         aw_file_identify(row->path, frame, error);
 }
 
 static int compare_doubles(const void *a, const void *b)
@@ -118,22 +120,16 @@ static double middle(const double *values, gsize n)
 }
 
 /* One contrast for all frames, so that the map shows no patchwork. */
-typedef struct {
-  Scan *scan;
-  double low, high;
-} Contrast;
-
-static gboolean take_overview(gsize item, guint worker, gpointer data, GError **error)
+static gboolean make_overviews(Scan *scan, GError **error)
 {
-  (void)worker;
-  const Contrast *contrast = data;
-  const AwScanRow *row = contrast->scan->rows->pdata[item];
-  AwFrame *frame = contrast->scan->frames->pdata[item];
-  g_autoptr(AwImage) image = aw_image_load(row->path, frame->page, frame->channel, NULL, error);
-  if (!image)
-    return FALSE;
-  frame->overview = aw_image_overview(image, OVERVIEW_SIDE_PX, contrast->low, contrast->high, error);
-  return frame->overview != NULL;
+  double low = middle(scan->low, scan->rows->len), high = middle(scan->high, scan->rows->len);
+  for (guint i = 0; i < scan->rows->len; i++) {
+    AwFrame *frame = scan->frames->pdata[i];
+    frame->overview = aw_image_overview(scan->small[i], OVERVIEW_SIDE_PX, low, high, error);
+    if (!frame->overview)
+      return FALSE;
+  }
+  return TRUE;
 }
 
 static gboolean read_images(Scan *scan, const AwStepContext *context, GError **error)
@@ -141,12 +137,11 @@ static gboolean read_images(Scan *scan, const AwStepContext *context, GError **e
   gsize n = scan->rows->len;
   scan->low = g_new0(double, n);
   scan->high = g_new0(double, n);
+  scan->small = g_new0(AwImage *, n);
   for (gsize i = 0; i < n; i++)
     g_ptr_array_add(scan->frames, aw_frame_new());
-  if (!aw_pool_run(context->n_threads, n, take_frame, scan, "reading images", context->progress, error))
-    return FALSE;
-  Contrast contrast = { scan, middle(scan->low, n), middle(scan->high, n) };
-  return aw_pool_run(context->n_threads, n, take_overview, &contrast, "making overviews", context->progress, error);
+  return aw_pool_run(context->n_threads, n, take_frame, scan, "reading images", context->progress, error) &&
+         make_overviews(scan, error);
 }
 
 /* The scan has one pixel size; frames that disagree cannot share a map. */
