@@ -1,11 +1,12 @@
 /* Aimwell - SPDX-License-Identifier: GPL-3.0-or-later */
+#include <cairo.h>
 #include <glib.h>
 #include <locale.h>
+#include <pango/pango.h>
 #include <stdio.h>
 #include <string.h>
 
 #include "cli/cli.h"
-#include "figures/canvas.h"
 #include "steps/versions.h"
 
 static const CliCommand commands[] = {

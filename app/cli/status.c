@@ -72,6 +72,7 @@ static void report(const AwStatus *s, gboolean verified)
 int cli_status(int argc, char **argv)
 {
   g_auto(CliCommon) common = { 0 };
+  g_autofree char *relink = NULL;
   gboolean json = FALSE, verify = FALSE;
   const GOptionEntry own[] = { { "json", 0, 0, G_OPTION_ARG_NONE, &json, "Print as JSON", NULL },
                                { "verify", 0, 0, G_OPTION_ARG_NONE, &verify,
@@ -83,10 +84,14 @@ int cli_status(int argc, char **argv)
   AwStepContext context;
   GError *error = NULL;
   cli_context_init(&context, &common);
-  g_autoptr(AwStatus) status = aw_step_status(common.words[0], verify, &context, &error);
+  gsize n_relinked = 0;
+  gboolean ok = !relink || aw_step_relink(common.words[0], relink, &context, &n_relinked, &error);
+  g_autoptr(AwStatus) status = ok ? aw_step_status(common.words[0], verify, &context, &error) : NULL;
   cli_context_finish(&context);
   if (!status)
     return cli_fail("status", error);
+  if (relink && !json)
+    cli_print("%" G_GSIZE_FORMAT " moved images were found in %s.\n", n_relinked, relink);
   if (json)
     report_json(status);
   else

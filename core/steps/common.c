@@ -4,6 +4,7 @@
 #include <string.h>
 
 #include "nuclei/scan.h"
+#include "record/files.h"
 
 void aw_step_warn(const AwStepContext *context, const char *format, ...)
 {
@@ -44,18 +45,6 @@ gboolean aw_step_n_particles(AwRecord *record, gint64 *n_particles, GError **err
   return TRUE;
 }
 
-char *aw_step_folder(const AwRecord *record)
-{
-  g_autofree char *whole = g_canonicalize_filename(aw_record_path(record), NULL);
-  return g_path_get_dirname(whole);
-}
-
-char *aw_step_frame_path(const AwRecord *record, const AwFrame *frame)
-{
-  g_autofree char *folder = aw_step_folder(record);
-  return g_canonicalize_filename(frame->file, folder);
-}
-
 AwState *aw_step_states(AwRecord *record, GPtrArray *nuclei, GError **error)
 {
   g_autoptr(GArray) decisions = aw_record_decisions(record, error);
@@ -79,7 +68,7 @@ GArray *aw_step_scan_frames(const AwRecord *record, GPtrArray *frames, GPtrArray
   *paths = g_ptr_array_new_with_free_func(g_free);
   for (guint i = 0; i < frames->len; i++) {
     const AwFrame *frame = frames->pdata[i];
-    char *path = aw_step_frame_path(record, frame);
+    char *path = aw_record_file_path(record, frame->file);
     g_ptr_array_add(*paths, path);
     AwScanFrame one = { path, frame->page, frame->channel, frame->width_px, frame->height_px, frame->stage };
     g_array_append_val(list, one);

@@ -38,12 +38,6 @@ char *aw_step_name(const AwRecord *record);
 /* The particles planned for every target (1 unless chosen otherwise). */
 gboolean aw_step_n_particles(AwRecord *record, gint64 *n_particles, GError **error);
 
-/* The folder that relative image paths of the record start from. Free with g_free. */
-char *aw_step_folder(const AwRecord *record);
-
-/* The absolute path of a frame's image. Free with g_free. */
-char *aw_step_frame_path(const AwRecord *record, const AwFrame *frame);
-
 /* nuclei[i]'s state as an array in the same order; FOUND where nothing was decided. Free with g_free. */
 AwState *aw_step_states(AwRecord *record, GPtrArray *nuclei, GError **error);
 

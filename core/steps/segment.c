@@ -4,7 +4,7 @@
 #include "base/error.h"
 #include "base/text.h"
 #include "nuclei/same.h"
-#include "steps/images.h"
+#include "record/files.h"
 
 void aw_segment_summary_clear(AwSegmentSummary *summary)
 {
@@ -114,7 +114,9 @@ static AwScanResult *find_nuclei(AwRecord *record, const AwSegmentStep *step, co
   AwScanSettings settings;
   if (!scan_settings(record, step, context, &settings, error))
     return NULL;
-  g_autoptr(GPtrArray) frames = aw_step_verified_frames(record, context, error);
+  if (!aw_record_files_require(record, TRUE, context->n_threads, context->progress, error))
+    return NULL;
+  g_autoptr(GPtrArray) frames = aw_record_frames(record, error);
   if (!frames)
     return NULL;
   g_autoptr(GPtrArray) paths = NULL;

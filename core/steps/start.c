@@ -19,7 +19,7 @@ typedef struct {
   const AwStartSettings *settings;
   GPtrArray *rows;    /* AwScanRow */
   GPtrArray *frames;  /* AwFrame */
-  char *folder;       /* of the record */
+  AwRecord *record;   /* borrowed */
   double *low, *high; /* contrast range of each frame */
   AwImage **small;    /* shrunk planes until the common contrast is known */
 } Scan;
@@ -31,7 +31,6 @@ static void scan_clear(Scan *scan)
   g_free(scan->small);
   g_clear_pointer(&scan->rows, g_ptr_array_unref);
   g_clear_pointer(&scan->frames, g_ptr_array_unref);
-  g_free(scan->folder);
   g_free(scan->low);
   g_free(scan->high);
 }
@@ -100,10 +99,10 @@ static gboolean take_frame(gsize item, guint worker, gpointer data, GError **err
   if (!reader || !need_position(row, aw_image_reader_info(reader), error))
     return FALSE;
   fill_frame(frame, row, aw_image_reader_info(reader), scan->settings);
-  frame->file = aw_file_relative(scan->folder, row->path);
+  frame->file = aw_record_file_relative(scan->record, row->path);
   scan->small[item] = aw_image_reader_shrink(reader, OVERVIEW_SIDE_PX, error);
   return scan->small[item] && aw_image_contrast(scan->small[item], &scan->low[item], &scan->high[item], error) &&
-         aw_file_identify(row->path, frame, error);
+         aw_frame_identify(frame, row->path, error);
 }
 
 static int compare_doubles(const void *a, const void *b)
@@ -161,16 +160,18 @@ static gboolean check_pixel_sizes(const Scan *scan, double *pixel_um, GError **e
   return TRUE;
 }
 
-/* Half the diagonal of a frame, um: two frames farther apart than both together cannot touch. */
-static gboolean touches_any(const Scan *scan, guint i, double pixel_um)
+/* TRUE when the rectangles of two frames, camera taken as unturned, meet. */
+static gboolean frames_meet(const AwFrame *a, const AwFrame *b, double pixel_um)
 {
-  const AwFrame *a = scan->frames->pdata[i];
-  for (guint k = 0; k < scan->frames->len; k++) {
-    const AwFrame *b = scan->frames->pdata[k];
-    double dx = fabs(a->stage.x_um - b->stage.x_um) / pixel_um, dy = fabs(a->stage.y_um - b->stage.y_um) / pixel_um;
-    if (k != i && dx <= (a->width_px + b->width_px) / 2.0 && dy <= (a->height_px + b->height_px) / 2.0)
+  double dx = fabs(a->stage.x_um - b->stage.x_um) / pixel_um, dy = fabs(a->stage.y_um - b->stage.y_um) / pixel_um;
+  return dx <= (a->width_px + b->width_px) / 2.0 && dy <= (a->height_px + b->height_px) / 2.0;
+}
+
+static gboolean meets_any(const Scan *scan, guint i, double pixel_um)
+{
+  for (guint k = 0; k < scan->frames->len; k++)
+    if (k != i && frames_meet(scan->frames->pdata[i], scan->frames->pdata[k], pixel_um))
       return TRUE;
-  }
   return FALSE;
 }
 
@@ -183,9 +184,8 @@ static void warn_of_gaps(const Scan *scan, double pixel_um, const AwStepContext 
   gsize n_alone = 0;
   guint first = 0;
   for (guint i = 0; scan->frames->len > 1 && i < scan->frames->len; i++)
-    if (!touches_any(scan, i, pixel_um)) {
+    if (!meets_any(scan, i, pixel_um))
       first = n_alone++ ? first : i;
-    }
   if (n_alone)
     aw_step_warn(context,
                  "%" G_GSIZE_FORMAT
@@ -212,8 +212,9 @@ static void summarise(const Scan *scan, double pixel_um, AwStartSummary *s)
   s->height_um = y1 - y0;
 }
 
-static gboolean store(AwRecord *record, Scan *scan, double pixel_um, const AwStepContext *context, GError **error)
+static gboolean store(Scan *scan, double pixel_um, const AwStepContext *context, GError **error)
 {
+  AwRecord *record = scan->record;
   g_autofree char *now = aw_text_from_time((double)(g_get_real_time() / G_USEC_PER_SEC));
   AwPixelMap map = { { pixel_um, 0, 0, pixel_um }, AW_ORIGIN_ASSUMED, 0 };
   if (!aw_record_begin(record, context->who, error) || !aw_record_set_frames(record, scan->frames, error) ||
@@ -229,11 +230,10 @@ gboolean aw_step_start(const char *path, const AwStartSettings *settings, const 
                        AwStartSummary *summary, GError **error)
 {
   double pixel_um;
-  g_autofree char *whole = g_canonicalize_filename(path, NULL);
   g_autoptr(AwRecord) record = aw_record_create(path, error);
   if (!record)
     return FALSE;
-  g_auto(Scan) scan = { .settings = settings, .folder = g_path_get_dirname(whole) };
+  g_auto(Scan) scan = { .settings = settings, .record = record };
   scan.frames = g_ptr_array_new_with_free_func((GDestroyNotify)aw_frame_free);
   scan.rows =
       settings->scan_table ? rows_of_table(settings->scan_table, context, error) : rows_of_images(settings->images);
@@ -241,5 +241,5 @@ gboolean aw_step_start(const char *path, const AwStartSettings *settings, const 
     return FALSE;
   warn_of_gaps(&scan, pixel_um, context);
   summarise(&scan, pixel_um, summary);
-  return store(record, &scan, pixel_um, context, error);
+  return store(&scan, pixel_um, context, error);
 }

@@ -99,6 +99,30 @@ static gboolean count_journal(AwRecord *record, AwStatus *s, GError **error)
   return TRUE;
 }
 
+static gboolean check_images(AwRecord *record, gboolean full, const AwStepContext *context, AwStatus *s, GError **error)
+{
+  g_autoptr(GPtrArray) checks = aw_record_files_check(record, full, context->n_threads, context->progress, error);
+  if (!checks)
+    return FALSE;
+  s->changed = g_ptr_array_new_with_free_func(g_free);
+  for (guint i = 0; i < checks->len; i++) {
+    const AwFileCheck *check = checks->pdata[i];
+    if (check->problem)
+      g_ptr_array_add(s->changed, g_strdup(check->problem));
+  }
+  return TRUE;
+}
+
+gboolean aw_step_relink(const char *path, const char *folder, const AwStepContext *context, gsize *n_relinked,
+                        GError **error)
+{
+  g_autoptr(AwRecord) record = aw_step_open(path, context, error);
+  if (!record || !aw_record_files_relink(record, folder, context->progress, n_relinked, error))
+    return FALSE;
+  g_autofree char *action = g_strdup_printf("found %" G_GSIZE_FORMAT " moved images in %s", *n_relinked, folder);
+  return *n_relinked == 0 || aw_record_commit(record, action, error);
+}
+
 AwStatus *aw_step_status(const char *path, gboolean verify, const AwStepContext *context, GError **error)
 {
   g_autoptr(AwRecord) record = aw_record_open(path, AW_RECORD_READ, error);
@@ -106,8 +130,8 @@ AwStatus *aw_step_status(const char *path, gboolean verify, const AwStepContext 
     return NULL;
   g_autoptr(AwStatus) s = g_new0(AwStatus, 1);
   if (!read_facts(record, s, error) || !read_frames(record, s, error) || !count_nuclei(record, s, error) ||
-      !read_gates(record, s, error) || !read_plan(record, s, error) || !count_journal(record, s, error))
+      !read_gates(record, s, error) || !read_plan(record, s, error) || !count_journal(record, s, error) ||
+      !check_images(record, verify, context, s, error))
     return NULL;
-  s->changed = aw_step_check_images(record, verify, context, error);
-  return s->changed ? g_steal_pointer(&s) : NULL;
+  return g_steal_pointer(&s);
 }

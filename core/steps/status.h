@@ -28,4 +28,11 @@ G_DEFINE_AUTOPTR_CLEANUP_FUNC(AwStatus, aw_status_free)
 /* Reads the status; verify = TRUE hashes every image and runs the record's own check. */
 AwStatus *aw_step_status(const char *path, gboolean verify, const AwStepContext *context, GError **error);
 
+/**
+ * Looks for images that were moved in `folder` and below it, by name and SHA-256; *n_relinked tells how many were
+ * found. Finding none changes nothing.
+ */
+gboolean aw_step_relink(const char *path, const char *folder, const AwStepContext *context, gsize *n_relinked,
+                        GError **error);
+
 #endif

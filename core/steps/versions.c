@@ -9,8 +9,8 @@
 
 char *aw_versions_text(void)
 {
-  g_autofree char *image = aw_image_versions();
-  g_autofree char *record = aw_record_versions();
-  return g_strdup_printf("aimwell %s\n%s%sGSL %s\nGLib %u.%u.%u\n", AW_VERSION, image, record, gsl_version,
-                         glib_major_version, glib_minor_version, glib_micro_version);
+  g_autofree char *tiff = aw_tiff_version();
+  return g_strdup_printf("aimwell %s\nlibtiff %s\nlibpng %s\nSQLite %s\nGSL %s\nGLib %u.%u.%u\n", AW_VERSION, tiff,
+                         aw_png_version(), aw_sqlite_version(), gsl_version, glib_major_version, glib_minor_version,
+                         glib_micro_version);
 }
