@@ -194,7 +194,8 @@ gboolean cli_parse_number(const char *command, const char *name, const char *tex
   }
   if (*value >= min && *value <= max)
     return TRUE;
-  cli_usage(command, "%s %s is outside %g to %g", name, text, min, max);
+  g_autofree char *low = aw_text_from_double_exact(min), *high = aw_text_from_double_exact(max);
+  cli_usage(command, "%s %s is outside %s to %s", name, text, low, high);
   return FALSE;
 }
 

@@ -64,5 +64,6 @@ static int run(int argc, char **argv)
 int main(int argc, char **argv)
 {
   setlocale(LC_ALL, "");
+  setlocale(LC_MESSAGES, "C"); /* the libraries' words match ours */
   return cli_finish_stdout(run(argc, argv));
 }

@@ -1,6 +1,8 @@
 /* Aimwell - SPDX-License-Identifier: GPL-3.0-or-later */
 #include "steps/route.h"
 
+#include <stdio.h>
+
 #include "cli/cli.h"
 #include "cli/text.h"
 
@@ -19,7 +21,7 @@ static void options_clear(Options *o)
 }
 G_DEFINE_AUTO_CLEANUP_CLEAR_FUNC(Options, options_clear)
 
-static void report_json(const AwRouteSummary *s)
+static void report_json(const AwRouteSummary *s, FILE *stream)
 {
   g_autoptr(GString) json = g_string_new("{");
   cli_json_int(json, "stops", (gint64)s->n);
@@ -28,14 +30,20 @@ static void report_json(const AwRouteSummary *s)
   cli_json_number(json, "two_opt_um", s->two_opt);
   cli_json_number(json, "final_um", s->final);
   cli_json_int(json, "steps", s->n_steps);
-  cli_print("%s}\n", json->str);
+  fprintf(stream, "%s}\n", json->str);
 }
 
-static void report(const AwRouteSummary *s)
+/* The points themselves may be on stdout; the summary then goes to stderr. */
+static FILE *summary_stream(const Options *o)
+{
+  return o->out && !g_file_test(o->out, G_FILE_TEST_IS_REGULAR) ? stderr : stdout;
+}
+
+static void report(const AwRouteSummary *s, FILE *stream)
 {
   g_autofree char *unsorted = cli_length(s->unsorted), *nearest = cli_length(s->nearest);
   g_autofree char *two_opt = cli_length(s->two_opt), *final = cli_length(s->final);
-  cli_print("%" G_GSIZE_FORMAT
+  fprintf(stream, "%" G_GSIZE_FORMAT
             " stops. Stage travel: %s unsorted, %s by nearest neighbour, %s after 2-opt, %s final.\n",
             s->n, unsorted, nearest, two_opt, final);
 }
@@ -58,9 +66,9 @@ static int route_anything(const CliCommon *common, const Options *o, const AwRou
   if (!ok)
     return cli_fail("route", error);
   if (o->json)
-    report_json(&summary);
+    report_json(&summary, summary_stream(o));
   else
-    report(&summary);
+    report(&summary, summary_stream(o));
   if (dish && !o->json)
     cli_print("Next: aimwell export %s -o targets.csv\n", path);
   return CLI_OK;

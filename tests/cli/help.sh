@@ -1,7 +1,7 @@
 # Aimwell - SPDX-License-Identifier: GPL-3.0-or-later
 # The help of every command; every option stands in the manual page too.
 run aimwell --help
-aimwell --version | sed 's/[0-9][0-9.]*/N/'
+aimwell --version | sed 's|[0-9][0-9.]*|N|g'
 for command in start segment choose route export map status undo journal; do
   run aimwell $command --help
   page=$TESTS/../docs/man/aimwell-$command.1

@@ -65,6 +65,13 @@ def check_text(path, lines):
                 fault(path, n, 'prints or ends the process below app/')
 
 
+def check_numbers(path, lines):
+    """printf writes decimal commas under some locales; numbers go through base/text.h."""
+    for n, line in enumerate(lines, 1):
+        if path.startswith(('core/', 'app/')) and re.search(r'"[^"]*%[-+ 0-9.*]*l?[eEfFgG]\b[^"]*"', line):
+            fault(path, n, 'formats a number by printf, which depends on the locale')
+
+
 def functions(path, lines):
     """Yields (first line, name, length, parameters): definitions whose body opens with '{' in column 0."""
     for n, line in enumerate(lines):
@@ -114,6 +121,7 @@ def main():
         paths.append((path, lines))
         check_includes(path, lines)
         check_text(path, lines)
+        check_numbers(path, lines)
     check_functions(paths)
     print('\n'.join(faults) if faults else f'{len(paths)} sources keep the rules')
     return 1 if faults else 0
