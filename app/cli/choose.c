@@ -22,7 +22,7 @@ int cli_choose(int argc, char **argv)
   g_auto(GStrv) gates = NULL;
   g_autofree char *accept = NULL, *reject = NULL, *forget = NULL;
   AwChooseSettings settings = { 0 };
-  gint64 n_particles = 0;
+  gint64 n_particles = G_MININT64; /* not given */
   const GOptionEntry own[] = {
     { "gate", 0, 0, G_OPTION_ARG_STRING_ARRAY, &gates, "Range on a feature; either end may be left open; may repeat",
       "FEATURE=MIN..MAX" },
@@ -44,8 +44,8 @@ int cli_choose(int argc, char **argv)
   settings.accept = accept;
   settings.reject = reject;
   settings.forget = forget;
-  settings.n_particles = n_particles;
-  settings.propose = gates || settings.no_default_gates || !(accept || reject || forget || n_particles);
+  settings.n_particles = n_particles == G_MININT64 ? NULL : &n_particles;
+  settings.propose = gates || settings.no_default_gates || !(accept || reject || forget || settings.n_particles);
   AwStepContext context;
   g_auto(AwChooseSummary) summary = { 0 };
   GError *error = NULL;

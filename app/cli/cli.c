@@ -81,7 +81,7 @@ static void stop_on_signal(int number)
 static void show_progress(const char *what, double done_frac, gpointer data)
 {
   (void)data;
-  fprintf(stderr, "\r\033[K%s %3.0f %%", what, 100.0 * done_frac);
+  fprintf(stderr, "\r\033[K%s %d %%", what, (int)(100.0 * done_frac));
   fflush(stderr);
   line_shown = TRUE;
 }

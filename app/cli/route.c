@@ -43,9 +43,9 @@ static void report(const AwRouteSummary *s, FILE *stream)
 {
   g_autofree char *unsorted = cli_length(s->unsorted), *nearest = cli_length(s->nearest);
   g_autofree char *two_opt = cli_length(s->two_opt), *final = cli_length(s->final);
-  fprintf(stream, "%" G_GSIZE_FORMAT
-            " stops. Stage travel: %s unsorted, %s by nearest neighbour, %s after 2-opt, %s final.\n",
-            s->n, unsorted, nearest, two_opt, final);
+  fprintf(stream,
+          "%" G_GSIZE_FORMAT " stops. Stage travel: %s unsorted, %s by nearest neighbour, %s after 2-opt, %s final.\n",
+          s->n, unsorted, nearest, two_opt, final);
 }
 
 static int route_anything(const CliCommon *common, const Options *o, const AwRouteSettings *settings)

@@ -34,7 +34,9 @@ static void report_scan(const AwStatus *s)
             aw_origin_name(s->map.origin));
   if (s->map_note)
     cli_print("         %s\n", s->map_note);
-  if (isfinite(s->scan_age_s)) {
+  if (s->scan_age_s < 0) {
+    cli_print("Age      the frames are dated in the future; check the clocks\n");
+  } else if (isfinite(s->scan_age_s)) {
     g_autofree char *hours = cli_number(s->scan_age_s / 3600, 1);
     cli_print("Age      the oldest frame was taken %s h ago; cells move\n", hours);
   }
@@ -77,8 +79,11 @@ int cli_status(int argc, char **argv)
   const GOptionEntry own[] = { { "json", 0, 0, G_OPTION_ARG_NONE, &json, "Print as JSON", NULL },
                                { "verify", 0, 0, G_OPTION_ARG_NONE, &verify,
                                  "Hash every image and check the record itself; fails on a difference", NULL },
+                               { "relink", 0, 0, G_OPTION_ARG_FILENAME, &relink,
+                                 "First look for moved images in FOLDER, by name and hash", "FOLDER" },
                                { 0 } };
-  if (!cli_parse(argc, argv, "NAME.dish [--json] [--verify]", "Shows a dish at a glance.", own, CLI_THREADS, &common) ||
+  if (!cli_parse(argc, argv, "NAME.dish [--json] [--verify] [--relink FOLDER]", "Shows a dish at a glance.", own,
+                 CLI_WHO | CLI_THREADS, &common) ||
       !cli_need_words("status", &common, 1, "NAME.dish"))
     return CLI_USAGE;
   AwStepContext context;

@@ -10,6 +10,7 @@
 
 #include "base/error.h"
 #include "base/quiet.h"
+#include "base/text.h"
 
 #define MAX_STEPS 200
 #define FWHM_OVER_SIGMA 2.3548200450309493
@@ -249,18 +250,18 @@ static gboolean check_sides(const AwEdgePoint *p, gsize n, gboolean fit_plateaus
   gsize k = MAX(1, n / 8);
   double left = mean_of(p, 0, k), right = mean_of(p, n - k, k);
   double low = fmin(left, right), high = fmax(left, right);
+  g_autofree char *at_left = aw_text_from_double(left, 3), *at_right = aw_text_from_double(right, 3);
   if (high - low < (fit_plateaus ? 0.2 : 0.1)) {
     g_set_error(error, AW_ERROR, AW_ERROR_RANGE,
-                "the edge scan shows no edge: the fraction is %.3f at one end and %.3f at the other", left, right);
+                "the edge scan shows no edge: the fraction is %s at one end and %s at the other", at_left, at_right);
     return FALSE;
   }
   if (fit_plateaus || (low <= 0.16 && high >= 0.84))
     return TRUE;
-  g_set_error(
-      error, AW_ERROR, AW_ERROR_RANGE,
-      "the edge scan %s: at its ends the fraction is %.3f and %.3f, but it must come below 0.16 and above 0.84; "
-      "scan farther, or fit the plateaus",
-      high < 0.84 ? "stops short of the open side" : "stops short of the covered side", left, right);
+  g_set_error(error, AW_ERROR, AW_ERROR_RANGE,
+              "the edge scan %s: at its ends the fraction is %s and %s, but it must come below 0.16 and above 0.84; "
+              "scan farther, or fit the plateaus",
+              high < 0.84 ? "stops short of the open side" : "stops short of the covered side", at_left, at_right);
   return FALSE;
 }
 

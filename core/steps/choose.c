@@ -171,14 +171,14 @@ static gboolean check_apart(const Choice *c, const AwChooseSettings *s, GError *
   return TRUE;
 }
 
-static gboolean set_particles(Choice *c, gint64 n_particles, GError **error)
+static gboolean set_particles(Choice *c, const gint64 *n_particles, GError **error)
 {
   if (!n_particles)
     return TRUE;
-  if (n_particles >= 1 && n_particles <= MAX_PARTICLES)
-    return aw_record_set_fact_double(c->record, AW_FACT_N_PARTICLES, (double)n_particles, error);
+  if (*n_particles >= 1 && *n_particles <= MAX_PARTICLES)
+    return aw_record_set_fact_double(c->record, AW_FACT_N_PARTICLES, (double)*n_particles, error);
   g_set_error(error, AW_ERROR, AW_ERROR_RANGE, "%" G_GINT64_FORMAT " particles per target is outside 1 to %d",
-              n_particles, MAX_PARTICLES);
+              *n_particles, MAX_PARTICLES);
   return FALSE;
 }
 

@@ -10,7 +10,7 @@ typedef struct {
   gboolean no_default_gates;            /* only the gates given */
   gboolean propose;                     /* gate all nuclei, even when only decisions are asked for */
   const char *accept, *reject, *forget; /* id lists such as "3,7,10-20", or the word "proposed"; NULL for none */
-  gint64 n_particles;                   /* 0: leave as it is */
+  const gint64 *n_particles;            /* for every target; NULL leaves it as it is */
 } AwChooseSettings;
 
 typedef struct {
