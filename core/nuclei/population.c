@@ -3,6 +3,7 @@
 
 #include "base/error.h"
 #include "base/random.h"
+#include "base/text.h"
 
 #define CELL_UM 40.0  /* of the search grid: more than the longest nucleus and a gap */
 #define MAX_TRIES 400 /* places tried for one nucleus */
@@ -274,9 +275,10 @@ static gboolean lay_nuclei(Ground *ground, GError **error)
     for (int i = 0; i < MAX_TRIES && !done; i++)
       done = in_clump ? lay_against(ground, &r) : lay_free(ground, is_mitotic, room_for_two, &r);
     if (!done) {
-      g_set_error(error, AW_ERROR, AW_ERROR_RANGE, "only %u of %d nuclei found room in %.0f x %.0f um",
-                  ground->truths->len, plan->n_nuclei, plan->to.x_um - plan->from.x_um,
-                  plan->to.y_um - plan->from.y_um);
+      g_autofree char *width = aw_text_from_double(plan->to.x_um - plan->from.x_um, 0);
+      g_autofree char *height = aw_text_from_double(plan->to.y_um - plan->from.y_um, 0);
+      g_set_error(error, AW_ERROR, AW_ERROR_RANGE, "only %u of %d nuclei found room in %s x %s um", ground->truths->len,
+                  plan->n_nuclei, width, height);
       return FALSE;
     }
   }
