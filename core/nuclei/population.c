@@ -272,8 +272,11 @@ static gboolean lay_nuclei(Ground *ground, GError **error)
     gboolean in_clump = ground->truths->len > 0 && aw_random_unit(&r) < plan->clump_frac;
     gboolean is_mitotic = !in_clump && aw_random_unit(&r) < plan->mitotic_frac / MAX(1.0 - plan->clump_frac, 1e-9);
     gboolean room_for_two = ground->truths->len + 2 <= (guint)plan->n_nuclei, done = FALSE;
+    /* Where no clump has room, or no interphase nucleus to lean on lies there yet, it lies alone. */
+    for (int i = 0; i < MAX_TRIES && in_clump && !done; i++)
+      done = lay_against(ground, &r);
     for (int i = 0; i < MAX_TRIES && !done; i++)
-      done = in_clump ? lay_against(ground, &r) : lay_free(ground, is_mitotic, room_for_two, &r);
+      done = lay_free(ground, is_mitotic, room_for_two, &r);
     if (!done) {
       g_autofree char *width = aw_text_from_double(plan->to.x_um - plan->from.x_um, 0);
       g_autofree char *height = aw_text_from_double(plan->to.y_um - plan->from.y_um, 0);

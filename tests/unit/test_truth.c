@@ -152,6 +152,22 @@ static void clumps(void)
   g_assert_true(n_touching > 100 && n_touching < 180);
 }
 
+/* Clumps lean on interphase nuclei only; while the dish has none, a nucleus of a clump lies alone. */
+static void clumps_after_mitosis(void)
+{
+  AwPopulationPlan odd = plan;
+  odd.clump_frac = 0.5;
+  odd.mitotic_frac = 0.5;
+  odd.n_nuclei = 60;
+  guint n_mitotic_first = 0;
+  for (odd.seed = 1; odd.seed <= 8; odd.seed++) {
+    g_autoptr(GPtrArray) all = aw_population_new(&odd, NULL);
+    g_assert_nonnull(all);
+    n_mitotic_first += ((const AwTruth *)all->pdata[0])->kind == AW_TRUTH_MITOTIC;
+  }
+  g_assert_cmpuint(n_mitotic_first, ==, 8);
+}
+
 static void too_crowded(void)
 {
   AwPopulationPlan full = plan;
@@ -172,6 +188,7 @@ int main(int argc, char **argv)
   g_test_add_func("/nuclei/texture/nucleoli", nucleoli);
   g_test_add_func("/nuclei/population/laid", population);
   g_test_add_func("/nuclei/population/clumps", clumps);
+  g_test_add_func("/nuclei/population/clumps_after_mitosis", clumps_after_mitosis);
   g_test_add_func("/nuclei/population/too_crowded", too_crowded);
   return g_test_run();
 }
