@@ -6,7 +6,7 @@
 #include "view/overlay_parts.h"
 
 #define OUTLINE_FROM 6.0 /* typical diameter from which outlines are drawn, logical px */
-#define MAX_FULL 1000    /* nuclei in view that are drawn in full style: about 4 us each */
+#define MAX_FULL 500     /* nuclei in view that are drawn in full style: about 4 us each */
 
 struct AwOverlay {
   AwRaster *raster;

@@ -2,7 +2,9 @@
 #include <math.h>
 #include <string.h>
 
+#include "base/csv.h"
 #include "figures/map.h"
+#include "image/overview.h"
 #include "support/fake_dish.h"
 
 #define W 1000
@@ -147,6 +149,104 @@ static void handedness(void)
   check_pattern(-2.5, FALSE);
   check_pattern(0, TRUE);
   check_pattern(1.2, TRUE);
+}
+
+/* ---- the sample scan and its truth table ---- */
+
+static double number(const AwCsv *csv, gsize row, const char *heading)
+{
+  double value = 0;
+  gsize column = 0;
+  g_assert_true(aw_csv_need(csv, heading, &column, NULL));
+  g_assert_true(aw_csv_double(csv, row, column, &value, NULL));
+  return value;
+}
+
+/* The sample's frames as scan.csv places them, under the camera's true matrix (sampleimages/README.md). */
+static FakeDish *sample_dish(void)
+{
+  FakeDishSettings s = fake_dish_defaults();
+  s.n_across = s.n_down = 0;
+  s.n_nuclei = 0;
+  s.overview_px = 0;
+  s.um_per_px = 0.6506;
+  s.camera_rad = 2.4 * G_PI / 180;
+  FakeDish *dish = fake_dish_new(&s);
+  g_autoptr(AwCsv) csv = aw_csv_read("sampleimages/scan.csv", ',', NULL);
+  g_assert_nonnull(csv);
+  for (gsize i = 0; i < aw_csv_n_rows(csv); i++) {
+    g_autofree char *path = g_build_filename("sampleimages", aw_csv_text(csv, i, 0), NULL);
+    g_autoptr(AwImage) image = aw_image_load(path, 0, -1, NULL, NULL);
+    g_assert_nonnull(image);
+    AwFrame *frame = g_new0(AwFrame, 1);
+    frame->width_px = image->width_px;
+    frame->height_px = image->height_px;
+    frame->stage = (AwScanPoint){ number(csv, i, "stage_x_um"), number(csv, i, "stage_y_um") };
+    frame->overview = aw_image_overview(image, 512, 0, 2000, NULL);
+    g_ptr_array_add(dish->frames, frame);
+  }
+  return dish;
+}
+
+/* Interphase nuclei of the truth table; turned round the dish's middle on request: 1 mirrored, 2 by 180 degrees. */
+static void add_truth(FakeDish *dish, int turn)
+{
+  g_autoptr(AwCsv) csv = aw_csv_read("sampleimages/truth.csv", ',', NULL);
+  g_assert_nonnull(csv);
+  AwScanPoint middle = ((const AwFrame *)dish->frames->pdata[dish->frames->len / 2])->stage;
+  g_ptr_array_set_size(dish->nuclei, 0);
+  for (gsize i = 0; i < aw_csv_n_rows(csv); i++) {
+    if (strcmp(aw_csv_text(csv, i, (gsize)aw_csv_find(csv, "kind")), "interphase") != 0)
+      continue;
+    AwScanPoint q = { number(csv, i, "x_um"), number(csv, i, "y_um") };
+    q.x_um = turn >= 1 ? 2 * middle.x_um - q.x_um : q.x_um;
+    q.y_um = turn == 2 ? 2 * middle.y_um - q.y_um : q.y_um;
+    fake_dish_add(dish, q, number(csv, i, "major_um"), number(csv, i, "minor_um"), number(csv, i, "angle_rad"));
+  }
+  g_free(dish->state);
+  dish->state = g_new(AwState, dish->nuclei->len);
+  for (guint i = 0; i < dish->nuclei->len; i++)
+    dish->state[i] = AW_STATE_ACCEPTED;
+}
+
+/* How bright the bare pictures are where accepted outlines are drawn over them. */
+static double brightness_under_outlines(const FakeDish *dish)
+{
+  AwMapContent content = content_of(dish);
+  cairo_surface_t *drawn = draw(&content);
+  content.nuclei = NULL;
+  cairo_surface_t *bare = draw(&content);
+  double n = 0, sum = 0;
+  for (int y = 0; y < H; y++)
+    for (int x = 0; x < W * 0.66; x++) {
+      Pixel p = pixel(drawn, x, y);
+      if (p.b < 170 || p.r > 120)
+        continue;
+      n++;
+      sum += grey(bare, x, y);
+    }
+  cairo_surface_destroy(drawn);
+  cairo_surface_destroy(bare);
+  g_assert_cmpfloat(n, >, 1000);
+  return sum / n;
+}
+
+/* Outlines made from the truth must lie on the nuclei of the pictures; mirrored or turned by half they would not. */
+static void truth_of_sample(void)
+{
+  if (!g_file_test("sampleimages/scan.csv", G_FILE_TEST_EXISTS)) {
+    g_test_skip("no sample scan beside the tests");
+    return;
+  }
+  g_autoptr(FakeDish) dish = sample_dish();
+  double brightness[3];
+  for (int turn = 0; turn < 3; turn++) {
+    add_truth(dish, turn);
+    brightness[turn] = brightness_under_outlines(dish);
+    g_test_message("turn %d: mean grey %g", turn, brightness[turn]);
+  }
+  g_assert_cmpfloat(brightness[0], >, 1.6 * brightness[1]);
+  g_assert_cmpfloat(brightness[0], >, 1.6 * brightness[2]);
 }
 
 static void reverse(GPtrArray *list)
@@ -297,6 +397,7 @@ int main(int argc, char **argv)
 {
   g_test_init(&argc, &argv, NULL);
   g_test_add_func("/figures/map/handedness", handedness);
+  g_test_add_func("/figures/map/truth_of_sample", truth_of_sample);
   g_test_add_func("/figures/map/overlaps_agree", overlaps_agree);
   g_test_add_func("/figures/map/empty_states", empty_states);
   g_test_add_func("/figures/map/mad_numbers", mad_numbers);

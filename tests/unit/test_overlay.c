@@ -139,7 +139,7 @@ static void detail(void)
   g_assert_cmpint(aw_overlay_detail(2, 20000), ==, AW_DETAIL_MARKS);
   g_assert_cmpint(aw_overlay_detail(5.9, 1), ==, AW_DETAIL_MARKS);
   g_assert_cmpint(aw_overlay_detail(6.1, 10000), ==, AW_DETAIL_HAIRLINE);
-  g_assert_cmpint(aw_overlay_detail(6.1, 900), ==, AW_DETAIL_FULL);
+  g_assert_cmpint(aw_overlay_detail(6.1, 400), ==, AW_DETAIL_FULL);
   g_assert_cmpint(aw_overlay_detail(NAN, 1), ==, AW_DETAIL_MARKS);
 }
 
