@@ -33,6 +33,12 @@ typedef struct {
   const guint8 *at, *end;
 } Cursor;
 
+/* SQLite gives NULL for an empty blob, and C has no NULL + 0. */
+static Cursor cursor_over(const guint8 *bytes, gsize n_bytes)
+{
+  return (Cursor){ bytes, n_bytes ? bytes + n_bytes : bytes };
+}
+
 static gboolean get_unsigned(Cursor *in, guint64 *value)
 {
   *value = 0;
@@ -122,7 +128,7 @@ static gboolean get_run(Cursor *in, const AwRun *before, AwRun *run)
 
 gboolean aw_shape_unpack_runs(const guint8 *bytes, gsize n_bytes, AwRun **runs, gsize *n_runs, GError **error)
 {
-  Cursor in = { bytes, bytes + n_bytes };
+  Cursor in = cursor_over(bytes, n_bytes);
   gsize n;
   if (!get_header(&in, 3, &n, error))
     return FALSE;
@@ -181,7 +187,7 @@ static gboolean add_step(Cursor *in, gint64 *at)
 gboolean aw_shape_unpack_outline(const guint8 *bytes, gsize n_bytes, AwScanPoint **points, gsize *n_points,
                                  GError **error)
 {
-  Cursor in = { bytes, bytes + n_bytes };
+  Cursor in = cursor_over(bytes, n_bytes);
   gsize n;
   if (!get_header(&in, 2, &n, error))
     return FALSE;

@@ -14,13 +14,16 @@ static void read_all(AwRecord *record)
   aw_record_check(record, NULL);
   aw_record_pixel_map(record, &map, NULL);
   aw_record_next_nucleus_id(record, &id, NULL);
-  g_autoptr(GPtrArray) journal = aw_record_journal(record, NULL);
-  g_autoptr(GPtrArray) frames = aw_record_frames(record, NULL);
-  g_autoptr(GPtrArray) bare = aw_record_nuclei(record, FALSE, NULL);
-  g_autoptr(GPtrArray) whole = aw_record_nuclei(record, TRUE, NULL);
-  g_autoptr(GArray) decisions = aw_record_decisions(record, NULL);
-  g_autoptr(GArray) gates = aw_record_gates(record, NULL);
-  g_autoptr(GArray) tour = aw_record_tour(record, NULL);
+  GPtrArray *const lists[] = { aw_record_journal(record, NULL), aw_record_frames(record, NULL),
+                               aw_record_nuclei(record, FALSE, NULL), aw_record_nuclei(record, TRUE, NULL) };
+  GArray *const arrays[] = { aw_record_decisions(record, NULL), aw_record_gates(record, NULL),
+                             aw_record_tour(record, NULL) };
+  for (gsize i = 0; i < G_N_ELEMENTS(lists); i++)
+    if (lists[i])
+      g_ptr_array_unref(lists[i]);
+  for (gsize i = 0; i < G_N_ELEMENTS(arrays); i++)
+    if (arrays[i])
+      g_array_unref(arrays[i]);
 }
 
 static void change(AwRecord *record)
