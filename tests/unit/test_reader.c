@@ -7,6 +7,7 @@
 
 #include "../support/check.h"
 #include "../support/tiff_bytes.h"
+#include "base/pool.h"
 
 static void check_values(const AwImage *image, const double *want)
 {
@@ -374,6 +375,32 @@ static void broken_long_strip(void)
   aw_scratch_remove(folder);
 }
 
+static gboolean read_page(gsize item, guint worker, gpointer data, GError **error)
+{
+  (void)worker;
+  g_autoptr(AwImage) image = aw_image_load(data, (int)item % 40, -1, NULL, error);
+  return image && aw_image_value(image, 3, 2) == (double)(item % 40);
+}
+
+/* Many readers on one file at a time. */
+static void side_by_side(void)
+{
+  char *folder = aw_scratch_new();
+  g_autoptr(GError) error = NULL;
+  g_autoptr(TiffBytes) t = tiff_bytes_new(FALSE);
+  for (int page = 0; page < 40; page++) {
+    const guint8 packed[] = { 0xf5, (guint8)page }; /* PackBits: twelve times */
+    tiff_bytes_grey(t, 4, 3, 8, packed, sizeof packed);
+    tiff_bytes_set(t, 259, TIFF_U16, 32773);
+    tiff_bytes_set(t, 278, TIFF_U32, 3);
+    tiff_bytes_end_page(t);
+  }
+  g_autofree char *path = tiff_bytes_save(t, folder, "a.tif", 0);
+  g_assert_true(aw_pool_run(4, 400, read_page, path, "reading", NULL, &error));
+  g_assert_no_error(error);
+  aw_scratch_remove(folder);
+}
+
 /* The name says PNG, the bytes TIFF: the bytes count. */
 static void content_not_name(void)
 {
@@ -409,6 +436,7 @@ int main(int argc, char **argv)
   g_test_add_func("/image/reader/rectangles-of-tiles", rectangles_of_tiles);
   g_test_add_func("/image/reader/long-strips", long_strips);
   g_test_add_func("/image/reader/broken-long-strip", broken_long_strip);
+  g_test_add_func("/image/reader/side-by-side", side_by_side);
   g_test_add_func("/image/reader/content-not-name", content_not_name);
   return g_test_run();
 }
