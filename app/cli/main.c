@@ -6,6 +6,7 @@
 #include <stdio.h>
 #include <string.h>
 
+#include "base/output.h"
 #include "cli/cli.h"
 #include "steps/versions.h"
 
@@ -64,6 +65,7 @@ static int run(int argc, char **argv)
 int main(int argc, char **argv)
 {
   setlocale(LC_ALL, "");
+  aw_output_prepare_process();
   setlocale(LC_MESSAGES, "C"); /* the libraries' words match ours */
   return cli_finish_stdout(run(argc, argv));
 }

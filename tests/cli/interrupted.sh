@@ -8,7 +8,7 @@ quietly aimwell start a.dish --scan many.csv
 before=$(state a.dish)
 for signal in INT TERM; do
   "$AIMWELL" segment a.dish --threads 1 > out.txt 2>&1 &
-  sleep 0.4
+  until [ -e a.dish.lock ]; do sleep 0.02; done
   kill -$signal $!
   wait $!
   echo "$signal: exit $?"
