@@ -129,9 +129,10 @@ AwStatus *aw_step_status(const char *path, gboolean verify, const AwStepContext 
   if (!record || (verify && !aw_record_check(record, error)))
     return NULL;
   g_autoptr(AwStatus) s = g_new0(AwStatus, 1);
-  if (!read_facts(record, s, error) || !read_frames(record, s, error) || !count_nuclei(record, s, error) ||
-      !read_gates(record, s, error) || !read_plan(record, s, error) || !count_journal(record, s, error) ||
-      !check_images(record, verify, context, s, error))
+  if (!aw_record_read_begin(record, error) || !read_facts(record, s, error) || !read_frames(record, s, error) ||
+      !count_nuclei(record, s, error) || !read_gates(record, s, error) || !read_plan(record, s, error) ||
+      !count_journal(record, s, error))
     return NULL;
-  return g_steal_pointer(&s);
+  aw_record_read_end(record); /* hashing takes long and reads no more of the record than the list of files */
+  return check_images(record, verify, context, s, error) ? g_steal_pointer(&s) : NULL;
 }

@@ -48,8 +48,8 @@ AwDishView *aw_step_view(const char *path, GError **error)
     return NULL;
   g_autoptr(AwDishView) view = g_new0(AwDishView, 1);
   view->name = aw_step_name(record);
-  if (!(view->frames = aw_record_frames(record, error)) || !aw_record_pixel_map(record, &view->map, error) ||
-      !(view->nuclei = aw_record_nuclei(record, TRUE, error)) ||
+  if (!aw_record_read_begin(record, error) || !(view->frames = aw_record_frames(record, error)) ||
+      !aw_record_pixel_map(record, &view->map, error) || !(view->nuclei = aw_record_nuclei(record, TRUE, error)) ||
       !(view->state = aw_step_states(record, view->nuclei, error)) || !(view->tour = aw_record_tour(record, error)))
     return NULL;
   char *map_note = aw_record_fact(record, AW_FACT_MAP_NOTE, &failure);
