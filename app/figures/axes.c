@@ -152,22 +152,24 @@ static void draw_up(cairo_t *cr, const AwAxes *axes)
   double u = axes->u;
   AwLabel number = { .size = NUMBERS * u, .ink = aw_ink_text, .align = AW_ALIGN_RIGHT };
   AwTicks ticks = aw_axis_ticks(&axes->up, (int)(axes->height / (45 * u)));
+  double widest = 0;
   for (int i = 0; i < ticks.n; i++) {
-    double y = aw_axes_y(axes, ticks.at[i]), height;
+    double y = aw_axes_y(axes, ticks.at[i]), width, height;
     g_autofree char *text = aw_axis_tick_text(&axes->up, &ticks, i);
     aw_style_set_ink(cr, aw_ink_hair);
     if (axes->grid)
       line(cr, axes->x, y, axes->x + axes->width, y);
     aw_style_set_ink(cr, aw_ink_text);
     line(cr, axes->x - TICK * u, y, axes->x, y);
-    aw_label_measure(cr, &number, text, NULL, &height);
+    aw_label_measure(cr, &number, text, &width, &height);
+    widest = MAX(widest, width);
     aw_label_draw(cr, &number, text, axes->x - (TICK + 3) * u, y - height / 2);
   }
   if (!axes->up.label)
     return;
   AwLabel label = { .size = LABELS * u, .ink = aw_ink_text, .align = AW_ALIGN_CENTRE, .max_width = axes->height };
   cairo_save(cr);
-  cairo_translate(cr, axes->x - aw_axes_room_left(u), axes->y + axes->height / 2);
+  cairo_translate(cr, axes->x - widest - (TICK + 6 + 1.4 * LABELS) * u, axes->y + axes->height / 2);
   cairo_rotate(cr, -G_PI / 2);
   aw_label_draw(cr, &label, axes->up.label, 0, 0);
   cairo_restore(cr);

@@ -9,7 +9,7 @@ const AwInk aw_ink_casing = { 0.04, 0.05, 0.07, 0.75 };
 const AwInk aw_ink_tour = { 1, 1, 1, 1 };
 
 static const AwLook looks[] = {
-  [AW_STATE_FOUND] = { { 0.64, 0.68, 0.73, 1 }, 1.4, { 0.5, 2.6 }, 2, AW_GLYPH_NONE },
+  [AW_STATE_FOUND] = { { 0.58, 0.615, 0.66, 1 }, 1.4, { 0.5, 2.6 }, 2, AW_GLYPH_NONE },
   [AW_STATE_PROPOSED] = { { 1.0, 0.82, 0.29, 1 }, 2.0, { 5, 2.8 }, 2, AW_GLYPH_DIAMOND },
   [AW_STATE_ACCEPTED] = { { 0.22, 0.74, 0.97, 1 }, 2.3, { 0 }, 0, AW_GLYPH_DISC },
   [AW_STATE_REJECTED] = { { 0.97, 0.40, 0.25, 1 }, 2.0, { 5, 2.6, 0.4, 2.6 }, 4, AW_GLYPH_CROSS },

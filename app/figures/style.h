@@ -42,7 +42,7 @@ typedef struct {
 
 /**
  * The look of a nucleus in that state. The four inks stay apart for normal sight, protanopia, deuteranopia and
- * tritanopia (CIEDE2000 >= 15 between any two, simulated after Machado, Oliveira & Fernandes 2009) on dark pictures.
+ * tritanopia (CIEDE2000 >= 16 between any two, simulated after Machado, Oliveira & Fernandes 2009) on dark pictures.
  */
 const AwLook *aw_look_of_state(AwState state);
 

@@ -1,8 +1,11 @@
 /* Aimwell - SPDX-License-Identifier: GPL-3.0-or-later */
+#include <glib/gstdio.h>
+#include <locale.h>
 #include <math.h>
 #include <string.h>
 
 #include "base/csv.h"
+#include "base/error.h"
 #include "figures/map.h"
 #include "image/overview.h"
 #include "support/fake_dish.h"
@@ -375,6 +378,48 @@ static void tour_starts_at_first(void)
   cairo_surface_destroy(bare);
 }
 
+static char *written(const AwMapContent *content, const char *path, gsize *n)
+{
+  char *bytes = NULL;
+  GError *error = NULL;
+  g_assert_true(aw_map_write(content, path, 640, 480, &error));
+  g_assert_true(g_file_get_contents(path, &bytes, n, NULL));
+  g_remove(path);
+  return bytes;
+}
+
+/* Same content, same bytes: a second time in one process, and where the decimal point is a comma. */
+static void same_bytes(void)
+{
+  static const char *const names[] = { "map.png", "map.svg", "map.pdf" };
+  FakeDishSettings s = fake_dish_defaults();
+  s.n_nuclei = 60;
+  s.overview_px = 64;
+  g_autoptr(FakeDish) dish = fake_dish_new(&s);
+  AwMapContent content = content_of(dish);
+  g_autofree char *folder = g_dir_make_tmp("aimwell-map-XXXXXX", NULL);
+  for (gsize i = 0; i < G_N_ELEMENTS(names); i++) {
+    gsize n_first = 0, n_second = 0;
+    g_autofree char *path = g_build_filename(folder, names[i], NULL);
+    g_autofree char *first = written(&content, path, &n_first);
+    gboolean comma = setlocale(LC_ALL, "de_DE.UTF-8") != NULL;
+    g_autofree char *second = written(&content, path, &n_second);
+    setlocale(LC_ALL, "C");
+    g_test_message("%s: %s", names[i], comma ? "with a decimal comma too" : "no locale with a decimal comma here");
+    g_assert_cmpmem(first, n_first, second, n_second);
+  }
+  g_rmdir(folder);
+}
+
+static void unknown_ending(void)
+{
+  AwMapContent content = { .title = "test" };
+  GError *error = NULL;
+  g_assert_false(aw_map_write(&content, "map.bmp", 640, 480, &error));
+  g_assert_error(error, AW_ERROR, AW_ERROR_UNSUPPORTED);
+  g_error_free(error);
+}
+
 /* 20,000 nuclei and a tour through a third of them, at the size of a poster. */
 static void many_nuclei(void)
 {
@@ -403,6 +448,8 @@ int main(int argc, char **argv)
   g_test_add_func("/figures/map/mad_numbers", mad_numbers);
   g_test_add_func("/figures/map/useless_map", useless_map);
   g_test_add_func("/figures/map/tour_starts_at_first", tour_starts_at_first);
+  g_test_add_func("/figures/map/same_bytes", same_bytes);
+  g_test_add_func("/figures/map/unknown_ending", unknown_ending);
   g_test_add_func("/figures/map/many_nuclei", many_nuclei);
   return g_test_run();
 }
