@@ -7,8 +7,11 @@
 #include "base/text.h"
 #include "geometry/overlap_parts.h"
 
-/* Without agreement among picture shifts, `start` must explain this part of the views in its own overlaps. */
+/* A map is believed when it gives this part of the views in its own overlaps a partner; by chance few would have one.
+ */
 #define MIN_EXPLAINED 0.3
+#define MIN_POSSIBLE 8
+#define MIN_ON_LINE 5
 /* A shift of one pair of frames alone says something only beyond this evidence. */
 #define STRONG_EVIDENCE 5
 
@@ -34,21 +37,39 @@ static gsize count_frame_pairs(const GArray *pairs)
   return n;
 }
 
-/* Matches and solves twice, the second time closer; FALSE when A stays undetermined. */
-static gboolean refine(const AwOverlapFrame *frames, gsize n_frames, AwMatrix *a, double mark_px, AwOverlapFit *fit,
-                       double *explained_frac)
+/* TRUE when in every direction that should show enough shared views a fair part of them found their partners. */
+static gboolean is_explained(const GArray *pairs, const gsize *possible)
 {
+  gsize matched[AW_OVERLAP_SECTORS] = { 0 }, n_directions = 0;
+  for (guint i = 0; i < pairs->len; i++) {
+    const AwOverlapPair *p = &g_array_index(pairs, AwOverlapPair, i);
+    matched[aw_overlap_sector(p->sx, p->sy)]++;
+  }
+  for (int k = 0; k < AW_OVERLAP_SECTORS; k++) {
+    if (possible[k] < MIN_POSSIBLE)
+      continue;
+    if ((double)matched[k] < MIN_EXPLAINED * (double)possible[k])
+      return FALSE;
+    n_directions++;
+  }
+  return n_directions > 0;
+}
+
+/* Matches and solves twice, the second time closer; FALSE when A stays undetermined or explains too little. */
+static gboolean refine(const AwOverlapFrame *frames, gsize n_frames, double mark_px, AwMatrix *a, AwOverlapFit *fit)
+{
+  gboolean explained = FALSE;
   for (int round = 0; round < 2; round++) {
-    gsize n_possible = 0;
+    gsize possible[AW_OVERLAP_SECTORS];
     double tolerance_px = round == 0 ? MAX(4.0, 0.4 * mark_px) : MAX(3.0, 0.25 * mark_px);
-    g_autoptr(GArray) pairs = aw_overlap_match(frames, n_frames, *a, tolerance_px, &n_possible);
+    g_autoptr(GArray) pairs = aw_overlap_match(frames, n_frames, *a, tolerance_px, mark_px, possible);
     if (!aw_overlap_solve(pairs, a, &fit->map.rms_um))
       return FALSE;
     fit->n_marks = pairs->len;
     fit->n_frame_pairs = count_frame_pairs(pairs);
-    *explained_frac = (double)pairs->len / (double)MAX(n_possible, 1);
+    explained = is_explained(pairs, possible);
   }
-  return TRUE;
+  return explained;
 }
 
 /* Largest distance by which the two maps part one mark seen at opposite edges of a frame, um. */
@@ -141,52 +162,68 @@ static gsize common_factor(const GArray *shifts, AwMatrix a, double *scale, doub
   return n;
 }
 
+static gboolean refuse_line(const Job *job, AwMatrix along, gsize n, GError **error)
+{
+  g_autofree char *difference = aw_overlap_name_difference(job->start->um_per_px, along);
+  g_autofree char *was = matrix_text(job->start->um_per_px);
+  g_set_error(error, AW_ERROR, AW_ERROR_RANGE,
+              "the overlaps of the frames contradict the %s pixel map (%s um per px): along the one line of the stage "
+              "readings they fit when %s (%" G_GSIZE_FORMAT " nuclei seen in two frames)",
+              aw_origin_name(job->start->origin), was, difference, n);
+  return FALSE;
+}
+
 /* Readings on one line: A cannot be fitted, but a wrong sign or pixel size along the line still shows. */
-static gboolean check_line(const GArray *shifts, const AwPixelMap *start, AwOverlapFit *fit, GError **error)
+static gboolean check_line(const Job *job, const GArray *shifts, AwOverlapFit *fit, GError **error)
 {
   double scale = 1, turn = 0;
-  AwMatrix a = start->um_per_px;
+  AwMatrix a = job->start->um_per_px;
+  gsize possible[AW_OVERLAP_SECTORS];
   gsize n = common_factor(shifts, a, &scale, &turn);
   AwMatrix z = { scale * cos(turn), -scale * sin(turn), scale * sin(turn), scale * cos(turn) };
   AwMatrix along = aw_matrix_multiply(z, a);
-  if (n == 0) {
-    fit->note = g_strdup_printf("%s: too few nuclei are seen in two frames to fit it", aw_origin_name(start->origin));
+  g_autoptr(GArray) pairs =
+      aw_overlap_match(job->frames, job->n_frames, along, MAX(4.0, 0.4 * job->mark_px), job->mark_px, possible);
+  const char *origin = aw_origin_name(job->start->origin);
+  if (n == 0 || pairs->len < MIN_ON_LINE || !is_explained(pairs, possible)) {
+    fit->note = g_strdup_printf("%s: too few nuclei are seen in two frames to fit it", origin);
     return TRUE;
   }
-  if (!aw_overlap_is_near(a, along)) {
-    g_autofree char *difference = aw_overlap_name_difference(a, along);
-    g_autofree char *was = matrix_text(a);
-    g_set_error(
-        error, AW_ERROR, AW_ERROR_RANGE,
-        "the overlaps of the frames contradict the %s pixel map (%s um per px): along the one line of the stage "
-        "readings they fit when %s (%" G_GSIZE_FORMAT " pairs of frames)",
-        aw_origin_name(start->origin), was, difference, n);
-    return FALSE;
-  }
-  fit->note = g_strdup_printf("%s: the stage readings of the overlapping frames lie on one line, which cannot fix it; "
-                              "%" G_GSIZE_FORMAT " pairs of frames agree with it along that line",
-                              aw_origin_name(start->origin), n);
+  if (!aw_overlap_is_near(a, along))
+    return refuse_line(job, along, pairs->len, error);
+  fit->note =
+      g_strdup_printf("%s: the stage readings of the overlapping frames lie on one line, which cannot fix it; %u "
+                      "nuclei seen in two frames agree with it along that line",
+                      origin, pairs->len);
   return TRUE;
 }
 
+static gboolean has_nothing_to_fit(const Job *job, AwOverlapFit *fit)
+{
+  if (job->n_frames >= 2 && job->mark_px > 0)
+    return FALSE;
+  fit->note = g_strdup_printf("%s: %s", aw_origin_name(job->start->origin),
+                              job->n_frames < 2 ? "one frame has no overlaps to fit it" : "no nucleus to fit it with");
+  return TRUE;
+}
+
+/* The caller's map speaks first: only when it leaves the overlaps unexplained are other ones sought. */
 gboolean aw_overlap_fit(const AwOverlapFrame *frames, gsize n_frames, const AwPixelMap *start, AwOverlapMode mode,
                         AwOverlapFit *fit, GError **error)
 {
   g_return_val_if_fail(start && fit && fabs(aw_matrix_det(start->um_per_px)) > 0, FALSE);
+  Job job = { frames, n_frames, start, mode, aw_overlap_mark_px(frames, n_frames) };
   *fit = (AwOverlapFit){ .map = *start };
-  double mark_px = aw_overlap_mark_px(frames, n_frames), explained = 0;
-  if (n_frames < 2 || !(mark_px > 0)) {
-    fit->note = g_strdup_printf("%s: %s", aw_origin_name(start->origin),
-                                n_frames < 2 ? "one frame has no overlaps to fit it" : "no nucleus to fit it with");
+  if (has_nothing_to_fit(&job, fit))
     return TRUE;
-  }
-  g_autoptr(GArray) shifts = aw_overlap_shifts(frames, n_frames, start->um_per_px, mark_px);
   AwMatrix a = start->um_per_px;
-  gboolean agreed = aw_overlap_consensus((const AwOverlapShift *)(const void *)shifts->data, shifts->len,
-                                         MAX(6.0, 0.3 * mark_px), &a);
-  gboolean solved = refine(frames, n_frames, &a, mark_px, fit, &explained);
-  if (solved && (agreed || explained >= MIN_EXPLAINED))
-    return judge(&(Job){ frames, n_frames, start, mode, mark_px }, a, fit, error);
+  if (refine(frames, n_frames, job.mark_px, &a, fit))
+    return judge(&job, a, fit, error);
+  g_autoptr(GArray) shifts = aw_overlap_shifts(frames, n_frames, start->um_per_px, job.mark_px);
+  const AwOverlapShift *shift = (const AwOverlapShift *)(const void *)shifts->data;
+  if (aw_overlap_consensus(shift, shifts->len, MAX(6.0, 0.3 * job.mark_px), &a) &&
+      refine(frames, n_frames, job.mark_px, &a, fit))
+    return judge(&job, a, fit, error);
   *fit = (AwOverlapFit){ .map = *start };
-  return check_line(shifts, start, fit, error);
+  return check_line(&job, shifts, fit, error);
 }

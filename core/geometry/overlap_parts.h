@@ -37,12 +37,17 @@ GArray *aw_overlap_shifts(const AwOverlapFrame *frames, gsize n_frames, AwMatrix
 /* The map that most shifts agree on; FALSE when too few do or all lie in one direction. */
 gboolean aw_overlap_consensus(const AwOverlapShift *shifts, gsize n, double tolerance_px, AwMatrix *a);
 
+/* Directions of stage moves, half turns: a wrong axis shows in one of them while another one may look right. */
+#define AW_OVERLAP_SECTORS 4
+int aw_overlap_sector(double sx, double sy);
+
 /**
  * aw_overlap_match: pairs of views of one mark within tolerance_px of where `a` puts them (AwOverlapPair), by frames,
- * then marks. *n_possible gets the number of views that should have a partner by `a`.
+ * then marks. possible (AW_OVERLAP_SECTORS numbers) gets by sector how many views should have a partner by `a`: those
+ * that fall into another frame by more than 0.6 mark_px, so that they are whole in it.
  */
-GArray *aw_overlap_match(const AwOverlapFrame *frames, gsize n_frames, AwMatrix a, double tolerance_px,
-                         gsize *n_possible);
+GArray *aw_overlap_match(const AwOverlapFrame *frames, gsize n_frames, AwMatrix a, double tolerance_px, double mark_px,
+                         gsize *possible);
 
 /* Trimmed least squares for A over the pairs; what lies too far off is removed from `pairs`. FALSE: not determined. */
 gboolean aw_overlap_solve(GArray *pairs, AwMatrix *a, double *rms_um);

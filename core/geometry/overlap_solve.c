@@ -1,5 +1,6 @@
 /* Aimwell - SPDX-License-Identifier: GPL-3.0-or-later */
 #include <gsl/gsl_statistics_double.h>
+#include <string.h>
 
 #include "base/grid.h"
 #include "geometry/overlap_parts.h"
@@ -51,9 +52,9 @@ static gboolean nearest_mark(const MarkIndex *index, double x, double y, double 
   return TRUE;
 }
 
-static gboolean is_inside(const AwOverlapFrame *frame, double x, double y)
+static gboolean is_inside(const AwOverlapFrame *frame, double x, double y, double margin)
 {
-  return x >= 0 && y >= 0 && x <= frame->width_px - 1 && y <= frame->height_px - 1;
+  return x >= margin && y >= margin && x <= frame->width_px - 1 - margin && y <= frame->height_px - 1 - margin;
 }
 
 /*
@@ -61,7 +62,7 @@ static gboolean is_inside(const AwOverlapFrame *frame, double x, double y)
  * many marks of a fall into b.
  */
 static gsize match_frames(const AwOverlapFrame *frames, const MarkIndex *index, AwOverlapPair base, double tolerance_px,
-                          GArray *pairs)
+                          double margin_px, GArray *pairs)
 {
   const AwOverlapFrame *a = &frames[base.a], *b = &frames[base.b];
   AwPixelPoint c = aw_overlap_centre_shift(a, b);
@@ -70,7 +71,7 @@ static gsize match_frames(const AwOverlapFrame *frames, const MarkIndex *index, 
   for (gsize i = 0; i < a->n_marks; i++) {
     gsize j = 0, back = 0;
     AwPixelPoint p = a->marks[i].p;
-    n_possible += is_inside(b, p.x_px - dx, p.y_px - dy);
+    n_possible += is_inside(b, p.x_px - dx, p.y_px - dy, margin_px);
     if (!nearest_mark(&index[base.b], p.x_px - dx, p.y_px - dy, tolerance_px, &j))
       continue;
     AwPixelPoint q = b->marks[j].p;
@@ -101,10 +102,10 @@ static AwOverlapPair expected_shift(const AwOverlapFrame *frames, gsize f, gsize
   return (AwOverlapPair){ f, g, sx, sy, inverse.xx * sx + inverse.xy * sy, inverse.yx * sx + inverse.yy * sy };
 }
 
-GArray *aw_overlap_match(const AwOverlapFrame *frames, gsize n_frames, AwMatrix a, double tolerance_px,
-                         gsize *n_possible)
+GArray *aw_overlap_match(const AwOverlapFrame *frames, gsize n_frames, AwMatrix a, double tolerance_px, double mark_px,
+                         gsize *possible)
 {
-  *n_possible = 0;
+  memset(possible, 0, AW_OVERLAP_SECTORS * sizeof *possible);
   GArray *pairs = g_array_new(FALSE, FALSE, sizeof(AwOverlapPair));
   g_autofree double *xy = g_new(double, 2 * n_frames + 1);
   for (gsize f = 0; f < n_frames; f++) {
@@ -123,7 +124,8 @@ GArray *aw_overlap_match(const AwOverlapFrame *frames, gsize n_frames, AwMatrix 
       AwOverlapPair base = expected_shift(frames, f, hit.index, inverse);
       if (hit.index > f && hit.distance > 0 && fabs(base.dx) < frames[f].width_px &&
           fabs(base.dy) < frames[f].height_px)
-        *n_possible += match_frames(frames, index, base, tolerance_px, pairs);
+        possible[aw_overlap_sector(base.sx, base.sy)] +=
+            match_frames(frames, index, base, tolerance_px, 0.6 * mark_px, pairs);
     }
   }
   free_index(index, n_frames);

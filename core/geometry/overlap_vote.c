@@ -11,7 +11,6 @@
  * less the logarithm of the number of places where chance could have made one.
  */
 #define N_NEIGHBOURS 24
-#define N_SECTORS 4
 #define N_PER_SECTOR 12
 #define MAX_MARKS 300
 #define AREA_FACTOR 1.3
@@ -186,10 +185,10 @@ static GArray *neighbouring_pairs(const AwOverlapFrame *frames, gsize n_frames)
   return pairs;
 }
 
-static int sector_of(const AwOverlapShift *pair)
+int aw_overlap_sector(double sx, double sy)
 {
-  double turn = atan2(pair->sy, pair->sx) / G_PI + 2; /* half turns, the same for a pair and its reverse */
-  return (int)floor(fmod(turn, 1.0) * N_SECTORS + 0.5) % N_SECTORS;
+  double turn = atan2(sy, sx) / G_PI + 2; /* half turns, the same for a move and its reverse */
+  return (int)floor(fmod(turn, 1.0) * AW_OVERLAP_SECTORS + 0.5) % AW_OVERLAP_SECTORS;
 }
 
 static gboolean is_same_move(const AwOverlapShift *a, const AwOverlapShift *b)
@@ -197,26 +196,58 @@ static gboolean is_same_move(const AwOverlapShift *a, const AwOverlapShift *b)
   return hypot(a->sx - b->sx, a->sy - b->sy) <= SAME_MOVE * hypot(a->sx, a->sy);
 }
 
-/* The joint shift of all pairs that move as pairs[first] does; they are taken out by setting their `n` to 1. */
-static AwOverlapShift vote(const AwOverlapFrame *frames, AwOverlapShift *pairs, gsize n, gsize first, AwMatrix inverse,
-                           double peak_px)
+static double places_of(const AwOverlapFrame *a, const AwOverlapFrame *b, double peak_px)
+{
+  double area = (double)(a->width_px + b->width_px) * (double)(a->height_px + b->height_px);
+  return area / (G_PI * peak_px * peak_px);
+}
+
+static AwOverlapShift vote_alone(const AwOverlapFrame *frames, AwOverlapShift pair, double peak_px)
+{
+  static const double stay[2] = { 0, 0 };
+  g_autoptr(GArray) all = g_array_new(FALSE, FALSE, 2 * sizeof(double));
+  add_differences(&frames[pair.a], &frames[pair.b], peak_px, stay, all);
+  find_crowd(all, peak_px, places_of(&frames[pair.a], &frames[pair.b], peak_px), &pair);
+  return pair;
+}
+
+/* The joint shift of all pairs that move as pairs[first] does, as far as they are no longer than the limit together. */
+static AwOverlapShift vote_jointly(const AwOverlapFrame *frames, const AwOverlapShift *pairs, gsize n, gsize first,
+                                   AwMatrix inverse, double peak_px)
 {
   AwOverlapShift shift = pairs[first];
   g_autoptr(GArray) all = g_array_new(FALSE, FALSE, 2 * sizeof(double));
-  for (gsize k = first; k < n; k++) {
-    if (pairs[k].n || !is_same_move(&shift, &pairs[k]))
-      continue;
-    pairs[k].n = 1;
-    if (all->len > MAX_DIFFERENCES)
+  for (gsize k = first; k < n && all->len <= MAX_DIFFERENCES; k++) {
+    if (!is_same_move(&shift, &pairs[k]))
       continue;
     double x = shift.sx - pairs[k].sx, y = shift.sy - pairs[k].sy;
     double move[2] = { inverse.xx * x + inverse.xy * y, inverse.yx * x + inverse.yy * y };
     add_differences(&frames[pairs[k].a], &frames[pairs[k].b], peak_px, move, all);
   }
-  const AwOverlapFrame *a = &frames[shift.a], *b = &frames[shift.b];
-  double area = (double)(a->width_px + b->width_px) * (double)(a->height_px + b->height_px);
-  find_crowd(all, peak_px, area / (G_PI * peak_px * peak_px), &shift);
+  find_crowd(all, peak_px, places_of(&frames[shift.a], &frames[shift.b], peak_px), &shift);
   return shift;
+}
+
+/* All pairs that move as pairs[first] does: each alone, and where none of them is sure, together. */
+static void vote(const AwOverlapFrame *frames, AwOverlapShift *pairs, gsize n, gsize first, AwMatrix inverse,
+                 double peak_px, GArray *found)
+{
+  double best = 0;
+  AwOverlapShift move = pairs[first];
+  for (gsize k = first; k < n; k++) {
+    if (pairs[k].n || !is_same_move(&move, &pairs[k]))
+      continue;
+    AwOverlapShift shift = vote_alone(frames, pairs[k], peak_px);
+    pairs[k].n = 1;
+    best = MAX(best, shift.evidence);
+    if (shift.evidence > 0)
+      g_array_append_val(found, shift);
+  }
+  if (best < STRONG_EVIDENCE) {
+    AwOverlapShift shift = vote_jointly(frames, pairs, n, first, inverse, peak_px);
+    if (shift.evidence > 0)
+      g_array_append_val(found, shift);
+  }
 }
 
 GArray *aw_overlap_shifts(const AwOverlapFrame *frames, gsize n_frames, AwMatrix start, double mark_px)
@@ -225,20 +256,16 @@ GArray *aw_overlap_shifts(const AwOverlapFrame *frames, gsize n_frames, AwMatrix
   g_autoptr(GArray) near = neighbouring_pairs(frames, n_frames);
   g_autoptr(GArray) pairs = g_array_new(FALSE, FALSE, sizeof(AwOverlapShift));
   AwMatrix inverse = aw_matrix_inverse(start);
-  int used[N_SECTORS] = { 0 };
+  int used[AW_OVERLAP_SECTORS] = { 0 };
   for (guint k = 0; k < near->len; k++) {
     AwOverlapShift pair = g_array_index(near, AwOverlapShift, k);
-    if (used[sector_of(&pair)]++ < N_PER_SECTOR)
+    if (used[aw_overlap_sector(pair.sx, pair.sy)]++ < N_PER_SECTOR)
       g_array_append_val(pairs, pair);
   }
   AwOverlapShift *p = (AwOverlapShift *)(void *)pairs->data;
-  for (guint k = 0; k < pairs->len; k++) {
-    if (p[k].n)
-      continue;
-    AwOverlapShift shift = vote(frames, p, pairs->len, k, inverse, MAX(MIN_PEAK_PX, 0.12 * mark_px));
-    if (shift.evidence > 0)
-      g_array_append_val(found, shift);
-  }
+  for (guint k = 0; k < pairs->len; k++)
+    if (!p[k].n)
+      vote(frames, p, pairs->len, k, inverse, MAX(MIN_PEAK_PX, 0.12 * mark_px), found);
   return found;
 }
 

@@ -5,8 +5,8 @@
 #include "geometry/outline.h"
 #include "nuclei/measure.h"
 
-/* An edge less than half as steep as the median one counts as out of focus. */
-#define SOFT_EDGE_RATIO 0.5
+/* An edge less steep than this part of the median one counts as out of focus. */
+#define SOFT_EDGE_RATIO 0.6
 /* Nuclei that reach farther than this many median reaches are compared with all others, so that searches stay short. */
 #define LARGE_REACH_RATIO 3
 

@@ -10,6 +10,7 @@ import os
 import re
 import subprocess
 import sys
+import tempfile
 
 import numpy as np
 from scipy.spatial import cKDTree
@@ -35,6 +36,23 @@ def read(name):
         return [r for r in csv.DictReader(line for line in f if not line.startswith('#'))]
 
 
+def refusal(change):
+    """What is said of the scan after `change` was made to every row of its table."""
+    rows = read('scan.csv')
+    for r in rows:
+        change(r)
+        r['file'] = os.path.abspath(os.path.join(SAMPLE, r['file']))
+    with tempfile.TemporaryDirectory() as folder:
+        path = os.path.join(folder, 'scan.csv')
+        with open(path, 'w', newline='', encoding='utf-8') as f:
+            table_out = csv.DictWriter(f, list(rows[0]))
+            table_out.writeheader()
+            table_out.writerows(rows)
+        out = subprocess.run([os.path.join(BIN, 'reference', 'segment_scan'), path], stdout=subprocess.PIPE,
+                             stderr=subprocess.PIPE, text=True)
+    return out.stderr.strip() if out.returncode else 'accepted'
+
+
 class Tap:
     def __init__(self):
         self.n = 0
@@ -45,7 +63,7 @@ class Tap:
 
 
 def main():
-    print('1..8')
+    print('1..10')
     tap = Tap()
     text = run(2)
     found, at = table(text)
@@ -88,6 +106,11 @@ def main():
     tap.check(not wrong, f'{len(border)} border nuclei, none of them whole in another frame: {wrong}')
     tap.check(run(1).replace('\n', '').split('number,')[1] == text.replace('\n', '').split('number,')[1],
               'the same nuclei with one thread as with two')
+    for name, change, part in (('mirrored x readings', lambda r: r.update(stage_x_um=str(80000 - float(r['stage_x_um']))),
+                                'the x readings of the stage run the other way'),
+                               ('half the pixel size', lambda r: r.update(pixel_um='0.325'), '(2.00 times')):
+        message = refusal(change)
+        tap.check('contradict the assumed pixel map' in message and part in message, f'refused, {name}: {message}')
     true = cKDTree([[float(t['x_um']), float(t['y_um'])] for t in nuclei])
     lone = sum(1 for i, q in enumerate(at) if true.query(q)[0] > size[i] / 2)
     print(f'# {len(found)} nuclei found, {len(nuclei)} true; {lone} found ones lie on no true nucleus')
