@@ -2,22 +2,18 @@
 #include "beam/edge.h"
 
 #include <gsl/gsl_cdf.h>
-#include <gsl/gsl_linalg.h>
 #include <gsl/gsl_randist.h>
 #include <math.h>
 #include <stdlib.h>
-#include <string.h>
 
 #include "base/error.h"
-#include "base/quiet.h"
 #include "base/text.h"
+#include "beam/scoring.h"
 
-#define MAX_STEPS 200
 #define FWHM_OVER_SIGMA 2.3548200450309493
 #define W1090_OVER_SIGMA 2.5631031310892007
 #define W1684_OVER_SIGMA 1.9889157653063543
 #define DISC_SIGMA_OVER_DIAMETER 0.25
-#define TINY_P 1e-9
 
 /* Parameters in the order of the vector: centre, log sigma, low, high. */
 enum { CENTRE, LOG_SIGMA, LOW, HIGH, MAX_PARAMETERS };
@@ -53,131 +49,27 @@ static double disc_slope(double u)
 
 static const Profile gaussian = { gauss_share, gauss_slope }, disc = { disc_share, disc_slope };
 
-/* One fit under way. */
+/* What the model knows besides its parameters. */
 typedef struct {
-  const AwEdgePoint *points;
-  gsize n;
-  gboolean counts;
-  int n_parameters;
-  double sign; /* +1 when the fraction rises */
+  const AwEdgePoint *points; /* sorted */
+  double sign;               /* +1 when the fraction rises */
   const Profile *profile;
-  double p[MAX_PARAMETERS];
-  double covariance[MAX_PARAMETERS][MAX_PARAMETERS];
 } Work;
 
-static double predict(const Work *w, const double *p, double x)
+/* The model of aw_scoring_fit. */
+static double model(const void *data, gsize i, const double *p, double *gradient)
 {
-  return p[LOW] + (p[HIGH] - p[LOW]) * w->profile->share(w->sign * (x - p[CENTRE]) / exp(p[LOG_SIGMA]));
-}
-
-static double xlogy(double x, double y)
-{
-  return x > 0 ? x * log(y) : 0;
-}
-
-/* Deviance for counts, residual sum of squares for fractions. */
-static double misfit(const Work *w, const double *p)
-{
-  double sum = 0;
-  for (gsize i = 0; i < w->n; i++) {
-    const AwEdgePoint *point = &w->points[i];
-    double f = predict(w, p, point->position_um);
-    if (!w->counts) {
-      sum += (point->fraction - f) * (point->fraction - f);
-      continue;
-    }
-    f = CLAMP(f, TINY_P, 1 - TINY_P);
-    sum += 2 * (xlogy(point->n_full, point->fraction / f) + xlogy(point->n_degraded, (1 - point->fraction) / (1 - f)));
+  const Work *w = data;
+  double sigma = exp(p[LOG_SIGMA]), u = w->sign * (w->points[i].position_um - p[CENTRE]) / sigma;
+  double height = p[HIGH] - p[LOW], share = w->profile->share(u);
+  if (gradient) {
+    double slope = w->profile->slope(u);
+    gradient[CENTRE] = -height * slope * w->sign / sigma;
+    gradient[LOG_SIGMA] = -height * slope * u;
+    gradient[LOW] = 1 - share;
+    gradient[HIGH] = share;
   }
-  return sum;
-}
-
-static void gradient(const Work *w, double x, double *g)
-{
-  double sigma = exp(w->p[LOG_SIGMA]), u = w->sign * (x - w->p[CENTRE]) / sigma;
-  double height = w->p[HIGH] - w->p[LOW], slope = w->profile->slope(u), share = w->profile->share(u);
-  g[CENTRE] = -height * slope * w->sign / sigma;
-  g[LOG_SIGMA] = -height * slope * u;
-  g[LOW] = 1 - share;
-  g[HIGH] = share;
-}
-
-/* Information matrix J'WJ and score J'W(y - f) at w->p. */
-static void normal_equations(const Work *w, gsl_matrix *a, gsl_vector *b)
-{
-  gsl_matrix_set_zero(a);
-  gsl_vector_set_zero(b);
-  for (gsize i = 0; i < w->n; i++) {
-    const AwEdgePoint *point = &w->points[i];
-    double g[MAX_PARAMETERS], f = predict(w, w->p, point->position_um);
-    double c = CLAMP(f, TINY_P, 1 - TINY_P);
-    double weight = w->counts ? (point->n_full + point->n_degraded) / (c * (1 - c)) : 1;
-    gradient(w, point->position_um, g);
-    for (int j = 0; j < w->n_parameters; j++) {
-      *gsl_vector_ptr(b, (size_t)j) += weight * g[j] * (point->fraction - f);
-      for (int k = 0; k < w->n_parameters; k++)
-        *gsl_matrix_ptr(a, (size_t)j, (size_t)k) += weight * g[j] * g[k];
-    }
-  }
-}
-
-/* Tries one damped step; TRUE when the misfit fell, *gain tells by how much. */
-static gboolean try_step(Work *w, const gsl_matrix *a, const gsl_vector *b, double damping, double now, double *gain)
-{
-  size_t m = (size_t)w->n_parameters;
-  gsl_matrix *damped = gsl_matrix_alloc(m, m);
-  gsl_vector *step = gsl_vector_alloc(m);
-  double p[MAX_PARAMETERS];
-  gsl_matrix_memcpy(damped, a);
-  for (size_t j = 0; j < m; j++)
-    *gsl_matrix_ptr(damped, j, j) += damping * gsl_matrix_get(a, j, j) + 1e-300;
-  gboolean ok = gsl_linalg_cholesky_decomp1(damped) == 0 && gsl_linalg_cholesky_solve(damped, b, step) == 0;
-  memcpy(p, w->p, sizeof p);
-  for (size_t j = 0; ok && j < m; j++)
-    p[j] += gsl_vector_get(step, j);
-  gsl_matrix_free(damped);
-  gsl_vector_free(step);
-  *gain = ok ? now - misfit(w, p) : -1;
-  if (!(*gain >= 0))
-    return FALSE;
-  memcpy(w->p, p, sizeof p);
-  return TRUE;
-}
-
-/* Inverse of the information matrix; FALSE when it has none. */
-static gboolean invert_information(Work *w, gsl_matrix *a)
-{
-  if (gsl_linalg_cholesky_decomp1(a) != 0 || gsl_linalg_cholesky_invert(a) != 0)
-    return FALSE;
-  for (int j = 0; j < w->n_parameters; j++)
-    for (int k = 0; k < w->n_parameters; k++)
-      w->covariance[j][k] = gsl_matrix_get(a, (size_t)j, (size_t)k);
-  return TRUE;
-}
-
-/* Fisher scoring (Gauss-Newton for fractions) with Levenberg's damping. FALSE when no answer is found. */
-static gboolean iterate(Work *w)
-{
-  size_t m = (size_t)w->n_parameters;
-  gsl_matrix *a = gsl_matrix_alloc(m, m);
-  gsl_vector *b = gsl_vector_alloc(m);
-  double damping = 1e-3, gain = 1;
-  for (int step = 0; step < MAX_STEPS && damping < 1e12; step++) {
-    double now = misfit(w, w->p);
-    normal_equations(w, a, b);
-    if (!try_step(w, a, b, damping, now, &gain)) {
-      damping *= 10;
-      continue;
-    }
-    damping = fmax(damping / 10, 1e-12);
-    if (gain <= 1e-13 * now + 1e-18)
-      break;
-  }
-  normal_equations(w, a, b);
-  gboolean ok = isfinite(misfit(w, w->p)) && invert_information(w, a);
-  gsl_matrix_free(a);
-  gsl_vector_free(b);
-  return ok;
+  return p[LOW] + height * share;
 }
 
 static int compare_points(const void *a, const void *b)
@@ -265,17 +157,17 @@ static gboolean check_sides(const AwEdgePoint *p, gsize n, gboolean fit_plateaus
   return FALSE;
 }
 
-static void set_start(Work *w, gboolean fit_plateaus)
+static void set_start(Work *w, AwScoring *s, gboolean fit_plateaus)
 {
-  gsize k = MAX(1, w->n / 8);
-  double left = mean_of(w->points, 0, k), right = mean_of(w->points, w->n - k, k);
-  double range = w->points[w->n - 1].position_um - w->points[0].position_um;
+  gsize n = s->n, k = MAX(1, n / 8);
+  double left = mean_of(w->points, 0, k), right = mean_of(w->points, n - k, k);
+  double range = w->points[n - 1].position_um - w->points[0].position_um;
   w->sign = right > left ? 1 : -1;
-  double a = crossing(w->points, w->n, left, right, 0.16), b = crossing(w->points, w->n, left, right, 0.84);
-  w->p[CENTRE] = crossing(w->points, w->n, left, right, 0.5);
-  w->p[LOG_SIGMA] = log(fmax(fabs(b - a) / 2, range / (double)w->n / 4));
-  w->p[LOW] = fit_plateaus ? fmin(left, right) : 0;
-  w->p[HIGH] = fit_plateaus ? fmax(left, right) : 1;
+  double a = crossing(w->points, n, left, right, 0.16), b = crossing(w->points, n, left, right, 0.84);
+  s->p[CENTRE] = crossing(w->points, n, left, right, 0.5);
+  s->p[LOG_SIGMA] = log(fmax(fabs(b - a) / 2, range / (double)n / 4));
+  s->p[LOW] = fit_plateaus ? fmin(left, right) : 0;
+  s->p[HIGH] = fit_plateaus ? fmax(left, right) : 1;
 }
 
 static AwEstimate scaled(double value, double se, double factor)
@@ -283,51 +175,80 @@ static AwEstimate scaled(double value, double se, double factor)
   return (AwEstimate){ value * factor, se * factor };
 }
 
-static void fill_estimates(const Work *w, AwEdgeFit *fit)
+static void fill_estimates(const AwScoring *s, AwEdgeFit *fit)
 {
-  double scale = w->counts ? 1 : fit->n_free > 0 ? fit->misfit / fit->n_free : NAN;
-  double sigma = exp(w->p[LOG_SIGMA]), sigma_se = sigma * sqrt(scale * w->covariance[LOG_SIGMA][LOG_SIGMA]);
-  gboolean levels = w->n_parameters > LOW;
-  fit->centre_um = (AwEstimate){ w->p[CENTRE], sqrt(scale * w->covariance[CENTRE][CENTRE]) };
+  double scale = s->n_trials ? 1 : fit->n_free > 0 ? fit->misfit / fit->n_free : NAN;
+  double sigma = exp(s->p[LOG_SIGMA]), sigma_se = sigma * sqrt(scale * s->covariance[LOG_SIGMA][LOG_SIGMA]);
+  gboolean levels = s->n_parameters > LOW;
+  fit->centre_um = (AwEstimate){ s->p[CENTRE], sqrt(scale * s->covariance[CENTRE][CENTRE]) };
   fit->sigma_um = (AwEstimate){ sigma, sigma_se };
   fit->fwhm_um = scaled(sigma, sigma_se, FWHM_OVER_SIGMA);
   fit->w1090_um = scaled(sigma, sigma_se, W1090_OVER_SIGMA);
   fit->w1684_um = scaled(sigma, sigma_se, W1684_OVER_SIGMA);
-  fit->low = (AwEstimate){ w->p[LOW], levels ? sqrt(scale * w->covariance[LOW][LOW]) : 0 };
-  fit->high = (AwEstimate){ w->p[HIGH], levels ? sqrt(scale * w->covariance[HIGH][HIGH]) : 0 };
+  fit->low = (AwEstimate){ s->p[LOW], levels ? sqrt(scale * s->covariance[LOW][LOW]) : 0 };
+  fit->high = (AwEstimate){ s->p[HIGH], levels ? sqrt(scale * s->covariance[HIGH][HIGH]) : 0 };
 }
 
-static gsize n_on_slope(const Work *w)
+static gsize n_on_slope(const AwScoring *s)
 {
   gsize n = 0;
-  for (gsize i = 0; i < w->n; i++) {
-    double share = (predict(w, w->p, w->points[i].position_um) - w->p[LOW]) / (w->p[HIGH] - w->p[LOW]);
+  for (gsize i = 0; i < s->n; i++) {
+    double share = (s->model(s->data, i, s->p, NULL) - s->p[LOW]) / (s->p[HIGH] - s->p[LOW]);
     n += share > 0.1 && share < 0.9;
   }
   return n;
 }
 
 /* The disc is preferred when it fits better by more than chance allows; for fractions by the ratio of the sums. */
-static void judge_shape(const Work *w, AwEdgeFit *fit)
+static void judge_shape(const AwScoring *s, const Work *w, AwEdgeFit *fit)
 {
-  Work other = *w;
-  other.profile = &disc;
-  if (iterate(&other)) {
+  Work as_disc = *w;
+  AwScoring other = *s;
+  as_disc.profile = &disc;
+  other.data = &as_disc;
+  if (aw_scoring_fit(&other)) {
     fit->disc_diameter_um = exp(other.p[LOG_SIGMA]) / DISC_SIGMA_OVER_DIAMETER;
-    fit->disc_misfit = misfit(&other, other.p);
-    gboolean better = w->counts ? fit->disc_misfit < fit->misfit - 10 : fit->disc_misfit < 0.5 * fit->misfit;
+    fit->disc_misfit = aw_scoring_misfit(&other);
+    gboolean better = s->n_trials ? fit->disc_misfit < fit->misfit - 10 : fit->disc_misfit < 0.5 * fit->misfit;
     fit->notes |= better ? AW_EDGE_NOT_GAUSSIAN : 0;
   }
-  if (w->counts && fit->p_value < 0.01)
+  if (fit->p_value < 0.01)
     fit->notes |= AW_EDGE_POOR_FIT;
-  if (n_on_slope(w) < 3)
+  if (n_on_slope(s) < 3)
     fit->notes |= AW_EDGE_COARSE;
+}
+
+/* Fits the sorted points, whose sides have been checked. */
+static gboolean fit_sorted(const AwEdgePoint *sorted, gsize n, const AwEdgeSettings *settings, AwEdgeFit *fit,
+                           GError **error)
+{
+  g_autofree double *fraction = g_new(double, n), *n_trials = g_new(double, n);
+  for (gsize i = 0; i < n; i++) {
+    fraction[i] = sorted[i].fraction;
+    n_trials[i] = sorted[i].n_full + sorted[i].n_degraded;
+  }
+  Work w = { .points = sorted, .profile = &gaussian };
+  AwScoring s = { .n = n, .n_parameters = settings->fit_plateaus ? 4 : 2, .fraction = fraction, .model = model };
+  s.n_trials = settings->counts ? n_trials : NULL;
+  s.data = &w;
+  set_start(&w, &s, settings->fit_plateaus);
+  if (!aw_scoring_fit(&s)) {
+    g_set_error_literal(error, AW_ERROR, AW_ERROR_RANGE,
+                        "the edge scan does not determine a width: too few points on the slope of the edge");
+    return FALSE;
+  }
+  fit->rising = w.sign > 0;
+  fit->misfit = aw_scoring_misfit(&s);
+  fit->n_free = (int)n - s.n_parameters;
+  fit->p_value = aw_scoring_p_value(&s, &fit->n_judged_free);
+  fill_estimates(&s, fit);
+  judge_shape(&s, &w, fit);
+  return TRUE;
 }
 
 gboolean aw_edge_fit(const AwEdgePoint *points, gsize n, const AwEdgeSettings *settings, AwEdgeFit *fit, GError **error)
 {
   int n_parameters = settings->fit_plateaus ? 4 : 2;
-  aw_gsl_quiet();
   *fit = (AwEdgeFit){ .p_value = NAN, .disc_diameter_um = NAN, .disc_misfit = NAN };
   if ((gsize)n_parameters + 2 > n) {
     g_set_error(error, AW_ERROR, AW_ERROR_RANGE,
@@ -335,22 +256,7 @@ gboolean aw_edge_fit(const AwEdgePoint *points, gsize n, const AwEdgeSettings *s
     return FALSE;
   }
   g_autofree AwEdgePoint *sorted = prepare(points, n, settings->counts, &fit->notes, error);
-  if (!sorted || !check_sides(sorted, n, settings->fit_plateaus, error))
-    return FALSE;
-  Work w = { .points = sorted, .n = n, .counts = settings->counts, .n_parameters = n_parameters, .profile = &gaussian };
-  set_start(&w, settings->fit_plateaus);
-  if (!iterate(&w)) {
-    g_set_error_literal(error, AW_ERROR, AW_ERROR_RANGE,
-                        "the edge scan does not determine a width: too few points on the slope of the edge");
-    return FALSE;
-  }
-  fit->rising = w.sign > 0;
-  fit->misfit = misfit(&w, w.p);
-  fit->n_free = (int)n - n_parameters;
-  fit->p_value = settings->counts ? gsl_cdf_chisq_Q(fit->misfit, fit->n_free) : NAN;
-  fill_estimates(&w, fit);
-  judge_shape(&w, fit);
-  return TRUE;
+  return sorted && check_sides(sorted, n, settings->fit_plateaus, error) && fit_sorted(sorted, n, settings, fit, error);
 }
 
 double aw_edge_predict(const AwEdgeFit *fit, double position_um, gboolean as_disc)

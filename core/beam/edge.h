@@ -38,7 +38,8 @@ typedef struct {
   gboolean rising;      /* the fraction rises with position */
   double misfit;        /* deviance for counts, residual sum of squares for fractions */
   int n_free;
-  double p_value;          /* of the deviance by chi square; NaN for fractions */
+  double p_value;          /* that chance alone scatters the counts so (aw_scoring_p_value); NaN for fractions */
+  int n_judged_free;       /* degrees of freedom behind p_value */
   double disc_diameter_um; /* of the uniform disc that fits best */
   double disc_misfit;
   guint notes; /* AwEdgeNote bits */

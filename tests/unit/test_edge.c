@@ -105,8 +105,7 @@ static void test_coverage(void)
 {
   AwEdgePoint points[33];
   AwEdgeSettings settings = { .counts = TRUE };
-  int n_centre = 0, n_sigma = 0;
-  double mean_p = 0;
+  int n_centre = 0, n_sigma = 0, n_tenth[10] = { 0 }, n_poor = 0;
   for (int run = 0; run < 2000; run++) {
     AwRandom r = aw_random_stream(41, (guint64)run);
     AwEdgeFit fit;
@@ -114,13 +113,20 @@ static void test_coverage(void)
     g_assert_true(aw_edge_fit(points, 33, &settings, &fit, NULL));
     n_centre += fabs(fit.centre_um.value - 0.37) < 1.96 * fit.centre_um.se;
     n_sigma += fabs(log(fit.sigma_um.value / 0.8)) < 1.96 * fit.sigma_um.se / fit.sigma_um.value;
-    mean_p += fit.p_value / 2000;
+    n_tenth[(int)fmin(9, 10 * fit.p_value)]++;
+    n_poor += (fit.notes & AW_EDGE_POOR_FIT) != 0;
   }
-  g_test_message("centre %.2f %%, sigma %.2f %%, mean p %.3f", n_centre / 20.0, n_sigma / 20.0, mean_p);
+  g_test_message("centre %.2f %%, sigma %.2f %%, poor %d", n_centre / 20.0, n_sigma / 20.0, n_poor);
   g_assert_cmpint(n_centre, >=, 1870);
   g_assert_cmpint(n_centre, <=, 1930);
   g_assert_cmpint(n_sigma, >=, 1870);
   g_assert_cmpint(n_sigma, <=, 1930);
+  g_assert_cmpint(n_poor, <=, 50);
+  for (int i = 0; i < 10; i++) { /* the p-value of a good fit is uniform: 200 in every tenth */
+    g_test_message("p from .%d: %d", i, n_tenth[i]);
+    g_assert_cmpint(n_tenth[i], >=, 140);
+    g_assert_cmpint(n_tenth[i], <=, 260);
+  }
 }
 
 static void refuse(AwEdgePoint *points, gsize n, gboolean counts, const char *words)
