@@ -5,6 +5,7 @@
 #include <stdlib.h>
 
 #include "base/error.h"
+#include "base/text.h"
 #include "beam/scoring.h"
 
 /* A bead is there when the bump lowers the deviance by more than this: p below 1e-5 for four parameters. */
@@ -150,6 +151,13 @@ static double flat_deviance(const AwScoring *s)
   return sum;
 }
 
+/* "(x, y)" to two places. Free with g_free. */
+static char *place_text(double x, double y)
+{
+  g_autofree char *across = aw_text_from_double(x, 2), *up = aw_text_from_double(y, 2);
+  return g_strdup_printf("(%s, %s)", across, up);
+}
+
 static gboolean judge(const AwScoring *s, gboolean found, const Extent *x, const Extent *y, GError **error)
 {
   if (!found || from_angle(s->p[PEAK]) <= from_angle(s->p[FLOOR]) ||
@@ -162,10 +170,12 @@ static gboolean judge(const AwScoring *s, gboolean found, const Extent *x, const
   double room_x = fmin(s->p[X] - x->min, x->max - s->p[X]), room_y = fmin(s->p[Y] - y->min, y->max - s->p[Y]);
   if (room_x >= sx && room_y >= sy)
     return TRUE;
+  g_autofree char *at = place_text(s->p[X], s->p[Y]), *sigma = place_text(sx, sy);
+  g_autofree char *from = place_text(x->min, y->min), *to = place_text(x->max, y->max);
   g_set_error(error, AW_ERROR, AW_ERROR_RANGE,
-              "the bead lies at the edge of the grid: its centre (%.2f, %.2f) um must stand at least one sigma (%.2f, "
-              "%.2f) um inside x %.2f to %.2f and y %.2f to %.2f um; scan round the bead",
-              s->p[X], s->p[Y], sx, sy, x->min, x->max, y->min, y->max);
+              "the bead lies at the edge of the grid: its centre %s um must stand at least one sigma %s um inside the "
+              "grid from %s to %s um; scan round the bead",
+              at, sigma, from, to);
   return FALSE;
 }
 

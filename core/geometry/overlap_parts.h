@@ -4,7 +4,7 @@
 
 #include "geometry/overlap.h"
 
-/* The parts of aw_overlap_fit; for core/geometry/overlap*.c alone. */
+/* The parts of aw_overlap_fit; for core/geometry/overlap*.c, and the words for markmap.c. */
 
 /* The shift between the pictures of two frames, found from their marks alone. */
 typedef struct {
