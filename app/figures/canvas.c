@@ -36,7 +36,7 @@ static gboolean kind_of(const char *path, Kind *kind, GError **error)
   if (g_file_test(path, G_FILE_TEST_EXISTS) && !g_file_test(path, G_FILE_TEST_IS_REGULAR | G_FILE_TEST_IS_DIR))
     return TRUE;
   g_set_error(error, AW_ERROR, AW_ERROR_UNSUPPORTED,
-              "%s: the ending does not say what picture to write; use .png, .svg or .pdf.", path);
+              "%s: the ending does not say what picture to write; use .png, .svg or .pdf", path);
   return FALSE;
 }
 
@@ -44,7 +44,7 @@ static gboolean side_fits(const char *path, const char *side, double value, GErr
 {
   if (value >= AW_MIN_CANVAS_SIDE && value <= AW_MAX_CANVAS_SIDE)
     return TRUE;
-  g_set_error(error, AW_ERROR, AW_ERROR_RANGE, "%s: a picture %d pixels %s cannot be drawn; the limits are %d to %d.",
+  g_set_error(error, AW_ERROR, AW_ERROR_RANGE, "%s: a picture %d pixels %s cannot be drawn; the limits are %d to %d",
               path, (int)CLAMP(value, -1e9, 1e9), side, AW_MIN_CANVAS_SIDE, AW_MAX_CANVAS_SIDE);
   return FALSE;
 }
@@ -72,7 +72,7 @@ static gboolean drawn_well(const AwCanvas *canvas, cairo_status_t status, GError
   if (status == CAIRO_STATUS_SUCCESS)
     return TRUE;
   g_set_error(error, AW_ERROR, status == CAIRO_STATUS_NO_MEMORY ? AW_ERROR_MEMORY : AW_ERROR_IO,
-              "%s: the picture could not be drawn: %s.", canvas->path, cairo_status_to_string(status));
+              "%s: the picture could not be drawn: %s", canvas->path, cairo_status_to_string(status));
   return FALSE;
 }
 

@@ -145,7 +145,7 @@ AwImage *aw_tile_read(AwImageReader *reader, AwTileKey key, GError **error)
   AwRect rect = aw_tile_rect(key, info->width_px, info->height_px);
   int k = 1 << key.level;
   if (rect.x0 >= rect.x1 || rect.y0 >= rect.y1) {
-    g_set_error(error, AW_ERROR, AW_ERROR_RANGE, "tile %d, %d of level %d lies outside an image of %d x %d pixels.",
+    g_set_error(error, AW_ERROR, AW_ERROR_RANGE, "tile %d, %d of level %d lies outside an image of %d x %d pixels",
                 key.column, key.row, key.level, info->width_px, info->height_px);
     return NULL;
   }
