@@ -5,7 +5,10 @@
 #include "base/limits.h"
 #include "plan/tour_search.h"
 
-/* The stages in a row: nearest neighbour, 2-opt, Or-opt; each is kept only when it made the tour shorter. */
+/* The stages in a row: nearest neighbour and 2-opt, which are reported; Or-opt from there and from greedy edges; the
+ * deep search and its chain of kicks from the better of the two. A handful of stops is solved outright instead. */
+
+#define MAX_BUDGET_S 1e6
 
 void aw_tour_free(AwTour *tour)
 {
@@ -17,7 +20,8 @@ void aw_tour_free(AwTour *tour)
 
 static double move_cost(const AwTourSettings *set, const AwStop *a, const AwStop *b)
 {
-  return set->cost ? set->cost(a, b, set->cost_data) : aw_tour_distance(a, b, set->unit);
+  return set->cost ? set->cost(a, b, set->cost_data)
+                   : aw_tour_distance(a, b, set->unit, set->unit > 0 ? 1 / set->unit : 0);
 }
 
 double aw_tour_cost(const AwStop *stops, gsize n, const guint32 *order, const AwTourSettings *set)
@@ -106,53 +110,66 @@ static gboolean measure_unsorted(const AwStop *stops, AwTour *tour, const AwTour
   return FALSE;
 }
 
-static gboolean search(const AwTourProblem *p, AwTour *tour, AwTourArray *array, const AwTourSettings *set,
-                       gint64 begun_us, AwProgress *progress, GError **error)
+/* Or-opt from the 2-opt tour and from greedy edges; *array becomes the shorter. */
+static gboolean start_well(const AwTourProblem *p, AwTourArray **array, AwProgress *progress, GError **error)
 {
   gboolean backwards;
-  aw_progress_report(progress, "tour", 0.1);
-  if (!aw_tour_two_opt(p, array, progress, error))
+  guint32 *order = aw_tour_start_greedy(p, progress, error);
+  g_autoptr(AwTourArray) greedy = order ? aw_tour_array_new(order, p->n, error) : NULL;
+  if (!greedy || !aw_tour_or_opt(p, *array, progress, error) || !aw_tour_or_opt(p, greedy, progress, error))
     return FALSE;
-  tour->two_opt = aw_tour_problem_total(p, array->order, &backwards);
-  if (!aw_tour_or_opt(p, array, progress, error))
-    return FALSE;
-  if (p->n > AW_TOUR_MAX_EXACT) {
-    AwTourChainLimits limits = { .seed = set->seed, .n_steps = set->n_steps < 0 ? 20 * (gint64)tour->n : set->n_steps };
-    limits.until_us = set->budget_s > 0 ? begun_us + (gint64)(1e6 * set->budget_s) : 0;
-    if (!aw_tour_chain(p, array, &limits, progress, error))
-      return FALSE;
-    tour->n_steps_used = limits.n_used;
-  }
-  aw_tour_problem_read(p, array->order, tour->order);
+  if (aw_tour_problem_total(p, greedy->order, &backwards) >= aw_tour_problem_total(p, (*array)->order, &backwards))
+    return TRUE;
+  aw_tour_array_free(*array);
+  *array = g_steal_pointer(&greedy);
   return TRUE;
 }
 
-static gboolean find(const AwStop *stops, AwTour *tour, const AwTourSettings *set, gint64 begun_us,
+static gboolean search(const AwTourProblem *p, AwTour *tour, AwTourArray **array, AwTourChainLimits *limits,
+                       AwProgress *progress, GError **error)
+{
+  gboolean backwards;
+  if (!aw_tour_two_opt(p, *array, progress, error))
+    return FALSE;
+  tour->two_opt = aw_tour_problem_total(p, (*array)->order, &backwards);
+  aw_progress_report(progress, "tour", 0.2);
+  if (p->n > AW_TOUR_MAX_EXACT &&
+      (!start_well(p, array, progress, error) || !aw_tour_chain(p, *array, limits, progress, error)))
+    return FALSE;
+  tour->n_steps_used = limits->n_used;
+  aw_tour_problem_read(p, (*array)->order, tour->order);
+  return TRUE;
+}
+
+static gboolean find(const AwStop *stops, AwTour *tour, const AwTourSettings *set, AwTourChainLimits *limits,
                      AwProgress *progress, GError **error)
 {
   gboolean backwards;
   g_autoptr(AwTourProblem) p = aw_tour_problem_new(stops, (guint32)tour->n, set, error);
-  if (!p)
-    return FALSE;
-  guint32 *start = aw_tour_start_nearest(p, progress, error);
+  guint32 *start = p ? aw_tour_start_nearest(p, progress, error) : NULL;
   if (!start)
     return FALSE;
   tour->nearest = aw_tour_problem_total(p, start, &backwards);
   p->least_gain = tour->nearest * (1e-9 / p->n + 1e-14);
   g_autoptr(AwTourArray) array = aw_tour_array_new(start, p->n, error);
-  return array && search(p, tour, array, set, begun_us, progress, error);
+  return array && search(p, tour, &array, limits, progress, error);
 }
 
 AwTour *aw_tour_find(const AwStop *stops, gsize n, const AwTourSettings *set, AwProgress *progress, GError **error)
 {
   g_return_val_if_fail((stops || n == 0) && set, NULL);
-  gint64 begun_us = g_get_monotonic_time();
   if (!check(stops, n, set, error))
     return NULL;
+  AwTourChainLimits limits = { .seed = set->seed, .n_steps = set->n_steps };
+  if (set->n_steps < 0)
+    limits.n_steps = aw_tour_default_steps(n);
+  if (set->budget_s > 0)
+    limits.until_us = g_get_monotonic_time() + (gint64)(1e6 * MIN(set->budget_s, MAX_BUDGET_S));
+  limits.speed = set->budget_s > 0 ? 0 : set->speed_um_per_s;
   g_autoptr(AwTour) tour = g_new0(AwTour, 1);
   tour->n = n;
   tour->order = aw_try_alloc(n, sizeof *tour->order, "a tour", error);
-  if (!tour->order || !measure_unsorted(stops, tour, set, error) || !find(stops, tour, set, begun_us, progress, error))
+  if (!tour->order || !measure_unsorted(stops, tour, set, error) || !find(stops, tour, set, &limits, progress, error))
     return NULL;
   if (n <= AW_TOUR_MAX_EXACT)
     aw_tour_exact(stops, (guint)n, set, tour->order);

@@ -1,4 +1,6 @@
 /* Aimwell - SPDX-License-Identifier: GPL-3.0-or-later */
+#include <math.h>
+
 #include "base/random.h"
 #include "plan/tour_deep.h"
 #include "plan/tour_search.h"
@@ -7,21 +9,40 @@
  * INFORMS J. Computing 15:82, 2003): a kick exchanges four edges that lie close together in the one way that no short
  * sequence undoes, the deep search repairs the tour around it, and the result is kept unless it is longer. */
 
-#define SPAN 50
+#define SPAN 30             /* edges of one kick are at most so far apart along the tour */
+#define STRIDE 10           /* nodes from one kick to the next */
+#define WINDOW 100          /* nodes among which the kick is drawn */
+#define BATCH 64            /* steps between looks at clock and cancel */
+#define START_HEAT 0.1      /* of the mean cost of an edge */
+#define NOMINAL_STEP_S 2e-5 /* what one step is taken to cost, so that results do not depend on the machine */
 
 typedef struct {
   AwTourDeep deep;
   AwRandom random;
+  guint32 site; /* where the kicks are at: they sweep over the nodes, which keeps memory near */
+  double heat;  /* how much worse a tour may become */
 } Chain;
 
-/* Cuts four edges within SPAN positions and joins the pieces A B C D as A D C B. Returns what it saved. */
+gint64 aw_tour_default_steps(gsize n)
+{
+  return (gint64)MIN(10 * n, 10000 + n / 2);
+}
+
+static guint32 next_site(Chain *c)
+{
+  guint32 n = c->deep.p->n;
+  c->site = (guint32)(((guint64)c->site + STRIDE) % n);
+  return (guint32)(((guint64)c->site + aw_random_below(&c->random, MIN(WINDOW, n))) % n);
+}
+
+/* Cuts four edges a little apart and joins the pieces A B C D as A D C B. Returns what it saved, minus infinity when
+ * nothing was done. */
 static double kick(Chain *c)
 {
   const AwTourProblem *p = c->deep.p;
   AwTourArray *tour = c->deep.tour;
   AwTourExchange x = { .k = 4, .link = { 5, 6, 3, 2, 7, 0, 1, 4 } };
-  guint32 span = MIN(SPAN, (p->n - 2) / 3);
-  guint32 at = aw_random_below(&c->random, p->n);
+  guint32 span = MIN(SPAN, (p->n - 2) / 3), at = tour->pos[next_site(c)];
   double saved = 0;
   for (guint i = 0; i < 4; i++) {
     guint32 a = tour->order[at], b = aw_tour_array_next(tour, a);
@@ -30,51 +51,70 @@ static double kick(Chain *c)
     saved += aw_tour_problem_cost(p, a, b);
     at = (guint32)(((guint64)at + 1 + aw_random_below(&c->random, span)) % p->n);
   }
-  if (isinf(saved))
-    return -INFINITY;
   for (guint i = 0; i < 8; i++)
     if (i < x.link[i])
       saved -= aw_tour_problem_cost(p, x.t[i], x.t[x.link[i]]);
-  if (!aw_tour_array_exchange(tour, &x))
+  if (!isfinite(saved) || !aw_tour_array_exchange(tour, &x))
     return -INFINITY;
   for (guint i = 0; i < 8; i++)
     aw_tour_queue_push(&c->deep.queue, x.t[i]);
   return saved;
 }
 
-static void step(Chain *c)
+/* One kick and its repair; a worse tour is kept with a chance that falls with the loss and with time. Returns what was
+ * saved. */
+static double step(Chain *c)
 {
   AwTourArray *tour = c->deep.tour;
   g_array_set_size(tour->journal, 0);
   double saved = kick(c);
-  if (isinf(saved))
-    return;
+  if (!isfinite(saved))
+    return 0;
   saved += aw_tour_deep_run(&c->deep);
-  if (saved < 0)
-    aw_tour_array_undo(tour);
+  if (saved >= 0 || saved > c->heat * log(1 - aw_random_unit(&c->random)))
+    return saved;
+  aw_tour_array_undo(tour);
+  return 0;
+}
+
+static double done_frac(const AwTourChainLimits *limits, gint64 begun_us)
+{
+  if (!limits->until_us)
+    return limits->n_steps > 0 ? (double)limits->n_used / (double)limits->n_steps : 1;
+  gint64 whole_us = limits->until_us - begun_us;
+  return whole_us > 0 ? (double)(g_get_monotonic_time() - begun_us) / (double)whole_us : 1;
+}
+
+static gboolean run(Chain *c, AwTourChainLimits *limits, AwProgress *progress, GError **error)
+{
+  gboolean backwards;
+  gint64 begun_us = g_get_monotonic_time();
+  double frac, heat = START_HEAT * aw_tour_problem_total(c->deep.p, c->deep.tour->order, &backwards) / c->deep.p->n;
+  while ((frac = done_frac(limits, begun_us)) < 1) {
+    c->heat = heat * (1 - frac);
+    for (guint i = 0; i < BATCH && (limits->until_us || limits->n_used < limits->n_steps); i++) {
+      step(c);
+      limits->n_used++;
+    }
+    aw_progress_report(progress, "tour", 0.3 + 0.7 * frac);
+    if (aw_progress_stopped(progress, error))
+      return FALSE;
+  }
+  return TRUE;
 }
 
 gboolean aw_tour_chain(const AwTourProblem *p, AwTourArray *tour, AwTourChainLimits *limits, AwProgress *progress,
                        GError **error)
 {
   Chain c = { .deep = { .p = p, .tour = tour }, .random = aw_random_stream(limits->seed, p->n) };
-  if (!aw_tour_queue_init(&c.deep.queue, p->n, error)) {
-    aw_tour_queue_clear(&c.deep.queue);
-    return FALSE;
-  }
-  for (guint32 i = 0; i < p->n; i++)
-    aw_tour_queue_push(&c.deep.queue, tour->order[i]);
-  aw_tour_deep_run(&c.deep);
-  tour->journal = g_array_new(FALSE, FALSE, sizeof(guint32));
-  gboolean stopped = FALSE;
-  while (!stopped &&
-         (limits->until_us ? g_get_monotonic_time() < limits->until_us : limits->n_used < limits->n_steps)) {
-    for (guint i = 0; i < 64 && (limits->until_us || limits->n_used < limits->n_steps); i++) {
-      step(&c);
-      limits->n_used++;
-    }
-    stopped = aw_progress_stopped(progress, error);
+  gboolean done = aw_tour_queue_init(&c.deep.queue, p->n, error);
+  for (guint32 v = 0; done && v < p->n; v++)
+    aw_tour_queue_push(&c.deep.queue, v);
+  if (done) {
+    aw_tour_deep_run(&c.deep);
+    tour->journal = g_array_new(FALSE, FALSE, sizeof(guint32));
+    done = run(&c, limits, progress, error);
   }
   aw_tour_queue_clear(&c.deep.queue);
-  return !stopped;
+  return done;
 }

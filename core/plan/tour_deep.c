@@ -8,7 +8,7 @@
  * alone (Helsgaun, Math. Programming Computation 1:119, 2009), so that the many failing attempts cost no more than
  * their distances. */
 
-static const guint breadth[AW_TOUR_MAX_DEPTH] = { 0, 5, 3, 3 };
+static const guint breadth[AW_TOUR_MAX_DEPTH] = { 0, 10, 5, 3 };
 
 static gboolean is_cut(const AwTourExchange *x, guint k, guint32 a, guint32 b)
 {
@@ -47,7 +47,8 @@ static double extend(AwTourDeep *s, guint k, double saved)
       double open = left + aw_tour_problem_cost(p, a, b), gain = open - aw_tour_problem_cost(p, b, t[0]);
       t[2 * k] = a;
       t[2 * k + 1] = b;
-      if (gain > p->least_gain && make(s, k + 1))
+      gboolean can_close = k > 1 || way == s->forward; /* two cuts close in one way only */
+      if (gain > p->least_gain && can_close && make(s, k + 1))
         return gain;
       if (k + 1 < AW_TOUR_MAX_DEPTH) {
         gain = extend(s, k + 1, open);
@@ -65,6 +66,7 @@ double aw_tour_deep_improve(AwTourDeep *s, guint32 v)
     guint32 w = way ? aw_tour_array_next(s->tour, v) : aw_tour_array_before(s->tour, v);
     s->x.t[0] = v;
     s->x.t[1] = w;
+    s->forward = way;
     double gain = extend(s, 1, aw_tour_problem_cost(s->p, v, w));
     if (gain > 0) {
       for (guint i = 0; i < 2 * s->x.k; i++)

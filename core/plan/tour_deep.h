@@ -15,6 +15,7 @@ typedef struct {
   const AwTourProblem *p;
   AwTourArray *tour;
   AwTourQueue queue;
+  gboolean forward; /* the first edge given up leads onwards along the tour */
   AwTourExchange x; /* the exchange under construction */
 } AwTourDeep;
 

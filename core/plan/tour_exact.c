@@ -14,7 +14,8 @@ typedef struct {
 
 static double move_cost(const AwTourSettings *set, const AwStop *a, const AwStop *b)
 {
-  return set->cost ? set->cost(a, b, set->cost_data) : aw_tour_distance(a, b, set->unit);
+  return set->cost ? set->cost(a, b, set->cost_data)
+                   : aw_tour_distance(a, b, set->unit, set->unit > 0 ? 1 / set->unit : 0);
 }
 
 static double begin_cost(const AwStop *stops, guint i, const AwTourSettings *set)

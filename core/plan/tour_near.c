@@ -6,63 +6,77 @@
  * points alone fail on lattices and at the rims of clusters, where all of them lie on one side; the two nearest of
  * each quadrant come first after the very nearest. */
 
-#define LOOKED_AT 20 /* nearest points from which the list is chosen */
-#define SURE 5       /* so many nearest are always taken */
+#define LOOKED_AT 12 /* nearest points from which the list is chosen */
+#define IN_QUADRANT 2
+#define MAX_POOL (LOOKED_AT + 4 * IN_QUADRANT)
 
 typedef struct {
   guint32 node;
   double cost;
+  guint quadrant;
   gboolean taken;
 } Candidate;
 
-static guint quadrant(const AwStop *a, const AwStop *b)
+typedef struct {
+  Candidate items[MAX_POOL]; /* by rising cost */
+  guint n, n_in[4];
+} Pool;
+
+static void put(const AwTourProblem *p, guint32 v, guint32 w, Pool *pool)
 {
-  double dx = b->x - a->x, dy = b->y - a->y;
-  return dx > 0 && dy >= 0 ? 0 : dx <= 0 && dy > 0 ? 1 : dx < 0 ? 2 : 3;
+  for (guint i = 0; i < pool->n; i++)
+    if (pool->items[i].node == w)
+      return;
+  Candidate c = { w, aw_tour_problem_cost(p, v, w), 0, FALSE };
+  const AwStop *a = &p->tree->at[v], *b = &p->tree->at[w];
+  c.quadrant = aw_tour_tree_quadrant(b->x - a->x, b->y - a->y);
+  pool->n_in[c.quadrant]++;
+  guint j = pool->n++;
+  for (; j > 0 && pool->items[j - 1].cost > c.cost; j--)
+    pool->items[j] = pool->items[j - 1];
+  pool->items[j] = c;
 }
 
-/* Candidates come in by rising cost; marks those to keep. */
-static void take_some(const AwTourProblem *p, guint32 v, Candidate *some, guint n_some)
+static void gather(const AwTourProblem *p, guint32 v, Pool *pool)
+{
+  guint32 slots[LOOKED_AT];
+  guint n = aw_tour_tree_nearest(p->tree, v, v, LOOKED_AT, slots);
+  for (guint i = 0; i < n; i++)
+    put(p, v, slots[i], pool);
+  for (guint q = 0; q < 4 && n == LOOKED_AT; q++) {
+    if (pool->n_in[q] >= IN_QUADRANT)
+      continue;
+    guint n_more = aw_tour_tree_nearest_in(p->tree, v, q, IN_QUADRANT, slots);
+    for (guint i = 0; i < n_more; i++)
+      put(p, v, slots[i], pool);
+  }
+}
+
+/* Marks the nearest, then the nearest of each quadrant, then whatever is left, until the list is full. */
+static void take_some(const AwTourProblem *p, Pool *pool)
 {
   guint n_taken = 0, n_in[4] = { 0 };
-  for (guint i = 0; i < n_some && i < SURE && n_taken < p->n_near; i++) {
-    some[i].taken = TRUE;
-    n_in[quadrant(&p->at[v], &p->at[some[i].node])]++;
-    n_taken++;
-  }
-  for (guint i = 0; i < n_some && n_taken < p->n_near; i++) {
-    guint q = quadrant(&p->at[v], &p->at[some[i].node]);
-    if (some[i].taken || n_in[q] >= 2)
-      continue;
-    some[i].taken = TRUE;
-    n_in[q]++;
-    n_taken++;
-  }
-  for (guint i = 0; i < n_some && n_taken < p->n_near; i++)
-    if (!some[i].taken) {
-      some[i].taken = TRUE;
+  for (guint turn = 0; turn < 3; turn++)
+    for (guint i = 0; i < pool->n && n_taken < p->n_near; i++) {
+      Candidate *c = &pool->items[i];
+      if (c->taken || (turn == 0 && i >= AW_TOUR_SURE_NEAR) || (turn == 1 && n_in[c->quadrant] >= IN_QUADRANT))
+        continue;
+      c->taken = TRUE;
+      n_in[c->quadrant]++;
       n_taken++;
     }
 }
 
 static void list_node(AwTourProblem *p, guint32 v)
 {
-  guint32 slots[AW_TOUR_TREE_MAX_K];
-  Candidate some[AW_TOUR_TREE_MAX_K];
-  guint n_some = aw_tour_tree_nearest(p->tree, v, v, LOOKED_AT, slots);
-  for (guint i = 0; i < n_some; i++) {
-    Candidate c = { slots[i], aw_tour_problem_cost(p, v, slots[i]), FALSE };
-    guint j = i;
-    for (; j > 0 && some[j - 1].cost > c.cost; j--)
-      some[j] = some[j - 1];
-    some[j] = c;
-  }
-  take_some(p, v, some, n_some);
+  Pool pool = { .n = 0 };
+  gather(p, v, &pool);
+  take_some(p, &pool);
   gsize k = (gsize)v * p->n_near;
-  for (guint i = 0; i < n_some; i++)
-    if (some[i].taken) {
-      p->near[k] = some[i].node;
-      p->near_cost[k++] = some[i].cost;
+  for (guint i = 0; i < pool.n; i++)
+    if (pool.items[i].taken) {
+      p->near[k] = pool.items[i].node;
+      p->near_cost[k++] = pool.items[i].cost;
     }
 }
 

@@ -91,6 +91,7 @@ AwTourProblem *aw_tour_problem_new(const AwStop *stops, guint32 n_stops, const A
   p->cost_data = set->cost_data;
   p->asymmetric = set->cost && set->asymmetric;
   p->unit = set->unit;
+  p->per_unit = set->unit > 0 ? 1 / set->unit : 0;
   if (!plant(p, stops, set, error))
     return NULL;
   p->n_points = p->tree->n;

@@ -9,6 +9,7 @@
 
 #define AW_TOUR_NONE G_MAXUINT32
 #define AW_TOUR_MAX_NEAR 10 /* neighbours kept per node */
+#define AW_TOUR_SURE_NEAR 5 /* of these, so many are the very nearest */
 
 /**
  * AwTourProblem: every kind of tour as one closed tour of nodes (internal to the tour engine).
@@ -30,11 +31,11 @@ typedef struct {
   AwTourCost cost;
   gpointer cost_data;
   gboolean asymmetric;
-  double unit;
-  double least_gain; /* a smaller gain is rounding noise */
-  guint n_near;      /* neighbours per node, at most AW_TOUR_MAX_NEAR */
-  guint32 *near;     /* n x n_near neighbours by rising cost */
-  double *near_cost; /* their costs */
+  double unit, per_unit; /* rounding of distances and its inverse; 0 for none */
+  double least_gain;     /* a smaller gain is rounding noise */
+  guint n_near;          /* neighbours per node, at most AW_TOUR_MAX_NEAR */
+  guint32 *near;         /* n x n_near neighbours by rising cost */
+  double *near_cost;     /* their costs */
 } AwTourProblem;
 
 /* Settings were checked by the caller. NULL with AW_ERROR_MEMORY. */
@@ -47,10 +48,10 @@ G_DEFINE_AUTOPTR_CLEANUP_FUNC(AwTourProblem, aw_tour_problem_free)
 gboolean aw_tour_problem_find_near(AwTourProblem *problem, GError **error);
 
 /* Straight distance, rounded to a multiple of unit when unit > 0. */
-static inline double aw_tour_distance(const AwStop *a, const AwStop *b, double unit)
+static inline double aw_tour_distance(const AwStop *a, const AwStop *b, double unit, double per_unit)
 {
   double dx = a->x - b->x, dy = a->y - b->y, d = sqrt(dx * dx + dy * dy);
-  return unit > 0 ? unit * floor(d / unit + 0.5) : d;
+  return unit > 0 ? unit * (double)(gint64)(d * per_unit + 0.5) : d;
 }
 
 double aw_tour_problem_called_cost(const AwTourProblem *problem, guint32 a, guint32 b);
@@ -67,7 +68,7 @@ static inline double aw_tour_problem_cost(const AwTourProblem *problem, guint32 
   }
   if (problem->cost)
     return aw_tour_problem_called_cost(problem, a, b);
-  return aw_tour_distance(&problem->at[a], &problem->at[b], problem->unit);
+  return aw_tour_distance(&problem->at[a], &problem->at[b], problem->unit, problem->per_unit);
 }
 
 /* Half of what a to b costs more than b to a; 0 for symmetric costs. */

@@ -24,8 +24,12 @@ typedef struct {
   guint64 seed;
   gint64 n_steps;  /* at most so many steps */
   gint64 until_us; /* > 0: until this monotonic time instead */
+  double speed;    /* um/s: stop when a step's gain is worth less than its nominal time; 0 never */
   gint64 n_used;   /* out: steps made */
 } AwTourChainLimits;
+
+/* How many steps serve n stops by default. */
+gint64 aw_tour_default_steps(gsize n);
 
 /* The deep search, then steps of the chained search (tour_chain.c). */
 gboolean aw_tour_chain(const AwTourProblem *problem, AwTourArray *tour, AwTourChainLimits *limits, AwProgress *progress,

@@ -5,11 +5,11 @@
 /* The nearest-neighbour tour (Bentley, ORSA J. Computing 4:387, 1992): what a careful person would drive by hand, and
  * the measure for everything after it. */
 
-/* The cheapest listed neighbour of v that is still there, else the nearest point that is. */
+/* The cheapest of the surely nearest neighbours of v that is still there, else the nearest point that is. */
 static guint32 step_from(const AwTourProblem *p, AwTourTree *tree, guint32 v)
 {
   const guint32 *near = p->near + (gsize)v * p->n_near;
-  for (guint i = 0; i < p->n_near; i++)
+  for (guint i = 0; i < MIN(p->n_near, AW_TOUR_SURE_NEAR); i++)
     if (!tree->gone[near[i]])
       return near[i];
   guint32 found = AW_TOUR_NONE;

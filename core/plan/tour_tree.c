@@ -26,6 +26,7 @@ typedef struct {
   const AwTourTree *tree;
   double x, y, worst2; /* squared distance of the k-th best so far */
   guint32 self, skip;
+  gint quadrant; /* -1: all of the plane */
   guint n, k;
   guint32 *slots;
   double d2[AW_TOUR_TREE_MAX_K];
@@ -152,11 +153,21 @@ void aw_tour_tree_remove(AwTourTree *tree, guint32 slot)
   }
 }
 
+guint aw_tour_tree_quadrant(double dx, double dy)
+{
+  if (dx > 0 && dy >= 0)
+    return 0;
+  if (dx <= 0 && dy > 0)
+    return 1;
+  return dx < 0 ? 2 : 3;
+}
+
 static void look_in_leaf(Query *q, guint32 lo, guint32 hi)
 {
   for (guint32 i = lo; i < hi; i++) {
     double dx = q->tree->at[i].x - q->x, dy = q->tree->at[i].y - q->y, d2 = dx * dx + dy * dy;
-    if (d2 >= q->worst2 || i == q->self || i == q->skip || q->tree->gone[i])
+    if (d2 >= q->worst2 || i == q->self || i == q->skip || q->tree->gone[i] ||
+        (q->quadrant >= 0 && (d2 == 0 || aw_tour_tree_quadrant(dx, dy) != (guint)q->quadrant)))
       continue;
     guint j = q->n < q->k ? q->n++ : q->n - 1;
     for (; j > 0 && q->d2[j - 1] > d2; j--) {
@@ -183,26 +194,40 @@ static void visit(Query *q, guint32 cell, guint level, guint32 lo, guint32 hi, d
   guint32 mid = lo + (hi - lo) / 2;
   double off = (c->axis ? q->y : q->x) - c->split;
   double far_x = c->axis ? off_x : off, far_y = c->axis ? off : off_y;
+  gboolean low = off < 0, want_low = TRUE, want_high = TRUE;
+  if (q->quadrant >= 0) { /* one child may lie wholly on the wrong side of the query point */
+    gboolean upwards = c->axis ? q->quadrant < 2 : q->quadrant == 0 || q->quadrant == 3;
+    want_low = !upwards || off <= 0;
+    want_high = upwards || off >= 0;
+  }
   double far2 = far_x * far_x + far_y * far_y;
-  if (off < 0) {
-    visit(q, 2 * cell, level + 1, lo, mid, off_x, off_y);
-    if (far2 < q->worst2)
-      visit(q, 2 * cell + 1, level + 1, mid, hi, far_x, far_y);
-  } else {
-    visit(q, 2 * cell + 1, level + 1, mid, hi, off_x, off_y);
-    if (far2 < q->worst2)
-      visit(q, 2 * cell, level + 1, lo, mid, far_x, far_y);
+  for (guint turn = 0; turn < 2; turn++) {
+    gboolean far = turn == 1, into_low = low != far;
+    if ((far && far2 >= q->worst2) || !(into_low ? want_low : want_high))
+      continue;
+    visit(q, 2 * cell + !into_low, level + 1, into_low ? lo : mid, into_low ? mid : hi, far ? far_x : off_x,
+          far ? far_y : off_y);
   }
 }
 
-guint aw_tour_tree_nearest(const AwTourTree *tree, guint32 from, guint32 skip, guint k, guint32 *slots)
+static guint ask(const AwTourTree *tree, guint32 from, guint32 skip, gint quadrant, guint k, guint32 *slots)
 {
   g_return_val_if_fail(from < tree->n && k >= 1 && k <= AW_TOUR_TREE_MAX_K, 0);
-  Query q = {
-    .tree = tree, .x = tree->at[from].x, .y = tree->at[from].y, .worst2 = INFINITY, .self = from, .skip = skip
-  };
+  Query q = { .tree = tree, .x = tree->at[from].x, .y = tree->at[from].y, .worst2 = INFINITY, .self = from };
+  q.skip = skip;
+  q.quadrant = quadrant;
   q.k = k;
   q.slots = slots;
   visit(&q, 1, 0, 0, tree->n, 0, 0);
   return q.n;
+}
+
+guint aw_tour_tree_nearest(const AwTourTree *tree, guint32 from, guint32 skip, guint k, guint32 *slots)
+{
+  return ask(tree, from, skip, -1, k, slots);
+}
+
+guint aw_tour_tree_nearest_in(const AwTourTree *tree, guint32 from, guint quadrant, guint k, guint32 *slots)
+{
+  return ask(tree, from, from, (gint)quadrant, k, slots);
 }

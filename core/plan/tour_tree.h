@@ -33,4 +33,13 @@ void aw_tour_tree_remove(AwTourTree *tree, guint32 slot);
  */
 guint aw_tour_tree_nearest(const AwTourTree *tree, guint32 from, guint32 skip, guint k, guint32 *slots);
 
+/**
+ * The quadrant, 0 ... 3, of the direction (dx, dy), which is not (0, 0): each holds one of the half-axes at its
+ * borders, so that every direction is in one quadrant.
+ */
+guint aw_tour_tree_quadrant(double dx, double dy);
+
+/* As aw_tour_tree_nearest, within one quadrant around `from` and without points at the same place. */
+guint aw_tour_tree_nearest_in(const AwTourTree *tree, guint32 from, guint quadrant, guint k, guint32 *slots);
+
 #endif
