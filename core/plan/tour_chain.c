@@ -1,5 +1,6 @@
 /* Aimwell - SPDX-License-Identifier: GPL-3.0-or-later */
 #include <math.h>
+#include <string.h>
 
 #include "base/random.h"
 #include "plan/tour_deep.h"
@@ -19,8 +20,10 @@
 typedef struct {
   AwTourDeep deep;
   AwRandom random;
-  guint32 site; /* where the kicks are at: they sweep over the nodes, which keeps memory near */
-  double heat;  /* how much worse a tour may become */
+  guint32 site;             /* where the kicks are at: they sweep over the nodes, which keeps memory near */
+  double heat;              /* how much worse a tour may become */
+  double saved, best_saved; /* since the first kick, now and at the best */
+  guint32 *best;            /* the order at the best */
 } Chain;
 
 gint64 aw_tour_default_steps(gsize n)
@@ -85,6 +88,18 @@ static double done_frac(const AwTourChainLimits *limits, gint64 begun_us)
   return whole_us > 0 ? (double)(g_get_monotonic_time() - begun_us) / (double)whole_us : 1;
 }
 
+static void batch(Chain *c, AwTourChainLimits *limits)
+{
+  for (guint i = 0; i < BATCH && (limits->until_us || limits->n_used < limits->n_steps); i++) {
+    c->saved += step(c);
+    limits->n_used++;
+  }
+  if (c->saved <= c->best_saved)
+    return;
+  c->best_saved = c->saved;
+  memcpy(c->best, c->deep.tour->order, c->deep.p->n * sizeof *c->best);
+}
+
 static gboolean run(Chain *c, AwTourChainLimits *limits, AwProgress *progress, GError **error)
 {
   gboolean backwards;
@@ -92,14 +107,12 @@ static gboolean run(Chain *c, AwTourChainLimits *limits, AwProgress *progress, G
   double frac, heat = START_HEAT * aw_tour_problem_total(c->deep.p, c->deep.tour->order, &backwards) / c->deep.p->n;
   while ((frac = done_frac(limits, begun_us)) < 1) {
     c->heat = heat * (1 - frac);
-    for (guint i = 0; i < BATCH && (limits->until_us || limits->n_used < limits->n_steps); i++) {
-      step(c);
-      limits->n_used++;
-    }
+    batch(c, limits);
     aw_progress_report(progress, "tour", 0.3 + 0.7 * frac);
     if (aw_progress_stopped(progress, error))
       return FALSE;
   }
+  memcpy(c->deep.tour->order, c->best, c->deep.p->n * sizeof *c->best);
   return TRUE;
 }
 
@@ -110,8 +123,11 @@ gboolean aw_tour_chain(const AwTourProblem *p, AwTourArray *tour, AwTourChainLim
   gboolean done = aw_tour_queue_init(&c.deep.queue, p->n, error);
   for (guint32 v = 0; done && v < p->n; v++)
     aw_tour_queue_push(&c.deep.queue, v);
+  g_autofree guint32 *best = c.best = done ? aw_try_alloc(p->n, sizeof *best, "a tour", error) : NULL;
+  done = best != NULL;
   if (done) {
     aw_tour_deep_run(&c.deep);
+    memcpy(best, tour->order, p->n * sizeof *best);
     tour->journal = g_array_new(FALSE, FALSE, sizeof(guint32));
     done = run(&c, limits, progress, error);
   }

@@ -47,7 +47,7 @@ static double extend(AwTourDeep *s, guint k, double saved)
       double open = left + aw_tour_problem_cost(p, a, b), gain = open - aw_tour_problem_cost(p, b, t[0]);
       t[2 * k] = a;
       t[2 * k + 1] = b;
-      gboolean can_close = k > 1 || way == s->forward; /* two cuts close in one way only */
+      gboolean can_close = k > 1 || (way == 1) == s->forward; /* two cuts close in one way only */
       if (gain > p->least_gain && can_close && make(s, k + 1))
         return gain;
       if (k + 1 < AW_TOUR_MAX_DEPTH) {
