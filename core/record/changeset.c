@@ -10,7 +10,7 @@
  * changes are kept as one zlib stream, cut into parts. Tables outside this list are never undone: journal and change
  * themselves, shape (write-once rows that undone nuclei still name) and file_time (a cache). Children come before
  * their parents, so that applying deletions never runs into a cascade. */
-static const char *const watched[] = { "decision", "tour_stop", "gate", "nucleus", "frame", "fact" };
+static const char *const watched[] = { "decision", "tour_stop", "gate", "nucleus", "frame", "fact", "calibration" };
 
 #define BUFFER_BYTES (1 << 16)
 

@@ -5,10 +5,21 @@
 #include "base/error.h"
 #include "record/private.h"
 
+static gboolean add_calibrations(AwRecord *record, GError **error)
+{
+  return aw_sql_exec(
+      record,
+      "CREATE TABLE calibration(id INTEGER NOT NULL PRIMARY KEY, kind TEXT NOT NULL, at_unix_s REAL NOT NULL,"
+      " source TEXT NOT NULL, sha256 TEXT NOT NULL, origin INTEGER NOT NULL CHECK(origin BETWEEN 0 AND 2),"
+      " text TEXT NOT NULL) STRICT",
+      error);
+}
+
 const AwMigration *aw_migrations(gsize *n)
 {
-  *n = 0; /* version 1 is the first; a step from 1 to 2 will stand in a table here */
-  return NULL;
+  static const AwMigration steps[] = { { 1, add_calibrations } };
+  *n = G_N_ELEMENTS(steps);
+  return steps;
 }
 
 static int copy_pages(sqlite3 *from, sqlite3 *to)

@@ -11,7 +11,7 @@
 #include "record/record.h"
 
 #define AW_RECORD_APPLICATION_ID 0x41696d77  /* "Aimw" */
-#define AW_RECORD_VERSION 1                  /* user_version that this Aimwell writes */
+#define AW_RECORD_VERSION 2                  /* user_version that this Aimwell writes */
 #define AW_RECORD_BUSY_MS 20000              /* how long a reader waits for a commit, and a commit for readers */
 #define AW_RECORD_MAX_VALUE_BYTES (64 << 20) /* largest text or blob accepted from a record */
 #define AW_RECORD_PART_BYTES (4 << 20)       /* a stored changeset is cut into parts of this size */

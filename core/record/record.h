@@ -125,6 +125,28 @@ typedef struct {
 gboolean aw_record_set_gates(AwRecord *record, const AwGateRow *gates, gsize n, GError **error);
 GArray *aw_record_gates(AwRecord *record, GError **error);
 
+/* One measurement or entered number; none is ever changed, the newest of a kind counts. */
+typedef struct {
+  gint64 id;
+  char *kind;       /* such as "marks", "edge-x" (docs/formats-record.md) */
+  double at_unix_s; /* when it was measured */
+  char *source;     /* file it was read from; "" for none */
+  char *sha256;     /* of that file; "" for none */
+  AwOrigin origin;
+  char *text; /* key file with the numbers */
+} AwCalibration;
+
+void aw_calibration_free(AwCalibration *calibration);
+
+/* Adds one; `id` of it is not looked at. */
+gboolean aw_record_add_calibration(AwRecord *record, const AwCalibration *calibration, GError **error);
+
+/* All, by time and then by id (GPtrArray of AwCalibration that frees its elements). */
+GPtrArray *aw_record_calibrations(AwRecord *record, GError **error);
+
+/* The newest of a kind in what aw_record_calibrations gave, or NULL. */
+const AwCalibration *aw_calibration_newest(GPtrArray *calibrations, const char *kind);
+
 /* The tour: nucleus ids in visiting order; setting an empty one clears it. */
 gboolean aw_record_set_tour(AwRecord *record, const gint64 *ids, gsize n, GError **error);
 GArray *aw_record_tour(AwRecord *record, GError **error); /* gint64 */

@@ -147,6 +147,18 @@ static void dump_choices(AwRecord *record, GString *text)
     g_string_append_printf(text, "stop %" G_GINT64_FORMAT "\n", g_array_index(tour, gint64, i));
 }
 
+static void dump_calibrations(AwRecord *record, GString *text)
+{
+  GError *error = NULL;
+  g_autoptr(GPtrArray) all = aw_record_calibrations(record, &error);
+  g_assert_no_error(error);
+  for (guint i = 0; i < all->len; i++) {
+    const AwCalibration *c = all->pdata[i];
+    g_string_append_printf(text, "calibration %" G_GINT64_FORMAT " %s %a %s %s %d %s\n", c->id, c->kind, c->at_unix_s,
+                           c->source, c->sha256, (int)c->origin, c->text);
+  }
+}
+
 char *aw_test_dish_dump(AwRecord *record)
 {
   GError *error = NULL;
@@ -167,5 +179,6 @@ char *aw_test_dish_dump(AwRecord *record)
   }
   dump_nuclei(record, text);
   dump_choices(record, text);
+  dump_calibrations(record, text);
   return g_string_free(text, FALSE);
 }

@@ -201,13 +201,13 @@ static void test_settings(Place *place, gconstpointer ignored)
   g_assert_true(aw_sql_int(record, "PRAGMA application_id", &value, NULL));
   g_assert_cmphex((guint64)value, ==, 0x41696d77);
   g_assert_true(aw_sql_int(record, "PRAGMA user_version", &value, NULL));
-  g_assert_cmpint(value, ==, 1);
+  g_assert_cmpint(value, ==, AW_RECORD_VERSION);
   g_assert_true(aw_sql_int(record, "PRAGMA synchronous", &value, NULL));
   g_assert_cmpint(value, >=, 2);
   g_assert_true(aw_sql_int(record, "PRAGMA foreign_keys", &value, NULL));
-  g_assert_cmpint(value, ==, 1);
+  g_assert_cmpint(value, ==, AW_RECORD_VERSION);
   g_assert_true(aw_sql_int(record, "SELECT journal_mode = 'delete' FROM pragma_journal_mode", &value, NULL));
-  g_assert_cmpint(value, ==, 1);
+  g_assert_cmpint(value, ==, AW_RECORD_VERSION);
 }
 
 static void test_facts(Place *place, gconstpointer ignored)
