@@ -69,15 +69,33 @@ static float locate(int p, int factor, int n, int *first, int *second)
   return u - (float)*first;
 }
 
+AW_HOT static void blend_rows(const float *restrict a, const float *restrict b, float v, float *restrict out, int n)
+{
+  for (int i = 0; i < n; i++)
+    out[i] = a[i] + v * (b[i] - a[i]);
+}
+
 void aw_plane_expand_row(const AwPlane *reduced, int factor, int y, int x0, int width, float *row)
 {
-  int j0, j1;
+  int j0, j1, n = reduced->width_px;
   float v = locate(y, factor, reduced->height_px, &j0, &j1);
-  const float *a = aw_plane_row(reduced, j0), *b = aw_plane_row(reduced, j1);
-  for (int x = 0; x < width; x++) {
-    int i0, i1;
-    float u = locate(x0 + x, factor, reduced->width_px, &i0, &i1);
-    float p = a[i0] + v * (b[i0] - a[i0]), q = a[i1] + v * (b[i1] - a[i1]);
-    row[x] = p + u * (q - p);
+  if (factor == 1) {
+    memcpy(row, aw_plane_row(reduced, j0) + x0, (gsize)width * sizeof *row);
+    return;
   }
+  int first = MAX(x0 / factor - 1, 0), last = MIN((x0 + width) / factor + 2, n);
+  float local[256], *blend = last - first <= 256 ? local : g_new(float, (gsize)(last - first));
+  blend_rows(aw_plane_row(reduced, j0) + first, aw_plane_row(reduced, j1) + first, v, blend, last - first);
+  float shift = 0.5f / (float)factor - 0.5f, top = (float)(n - 1);
+  for (int x = 0, block = x0 / factor, rest = x0 % factor; x < width; x++) {
+    float u = CLAMP((float)block + (float)rest / (float)factor + shift, 0.f, top);
+    int i = MIN((int)u, MAX(n - 2, 0)), next = MIN(i + 1, n - 1);
+    row[x] = blend[i - first] + (u - (float)i) * (blend[next - first] - blend[i - first]);
+    if (++rest == factor) {
+      rest = 0;
+      block++;
+    }
+  }
+  if (blend != local)
+    g_free(blend);
 }

@@ -86,46 +86,56 @@ static void meet(Regions *r, guint32 a, guint32 b, float value, float height)
     r->parent[low] = a == low ? b : a;
 }
 
-static guint32 highest_neighbour(const float *value, int width, int height, guint32 i, const guint32 *label)
+typedef struct {
+  const float *value;
+  guint32 *label;
+  int width, height;
+  gssize step[8]; /* to the eight neighbours */
+} Grid;
+
+static Grid grid_of(const float *value, guint32 *label, int width, int height)
 {
-  int x = (int)(i % (guint32)width), y = (int)(i / (guint32)width);
-  guint32 best = 0;
-  float top = 0;
-  for (int dy = y > 0 ? -1 : 0; dy <= (y + 1 < height ? 1 : 0); dy++)
-    for (int dx = x > 0 ? -1 : 0; dx <= (x + 1 < width ? 1 : 0); dx++) {
-      gsize j = (gsize)((gssize)i + (gssize)dy * width + dx);
-      if (label[j] && (!best || value[j] > top)) {
-        best = label[j];
-        top = value[j];
-      }
-    }
-  return best;
+  gssize w = width;
+  return (Grid){ value, label, width, height, { -w - 1, -w, -w + 1, -1, 1, w - 1, w, w + 1 } };
 }
 
-static void place(const float *value, int width, int height, guint32 i, float h, Regions *r, guint32 *label)
+/* The labels around a pixel; the first is that of the highest neighbour. Returns how many there are. */
+static int labels_around(const Grid *g, guint32 i, guint32 near[8])
 {
-  int x = (int)(i % (guint32)width), y = (int)(i / (guint32)width), n = 0;
-  guint32 near[8], best = 0;
+  int x = (int)(i % (guint32)g->width), y = (int)(i / (guint32)g->width), n = 0;
+  gboolean inner = x > 0 && y > 0 && x + 1 < g->width && y + 1 < g->height;
   float top = 0;
-  for (int dy = y > 0 ? -1 : 0; dy <= (y + 1 < height ? 1 : 0); dy++)
-    for (int dx = x > 0 ? -1 : 0; dx <= (x + 1 < width ? 1 : 0); dx++) {
-      gsize j = (gsize)((gssize)i + (gssize)dy * width + dx);
-      if (!label[j])
-        continue;
-      near[n++] = label[j];
-      if (!best || value[j] > top) {
-        best = label[j];
-        top = value[j];
-      }
+  for (int k = 0; k < 8; k++) {
+    int column = k < 3 ? k : k == 3 ? 0 : k == 4 ? 2 : k - 5, row = k < 3 ? 0 : k < 5 ? 1 : 2;
+    if (!inner && (x + column < 1 || x + column > g->width || y + row < 1 || y + row > g->height))
+      continue;
+    gsize j = (gsize)((gssize)i + g->step[k]);
+    guint32 label = g->label[j];
+    if (!label)
+      continue;
+    near[n] = label;
+    if (n == 0 || g->value[j] > top) {
+      near[n] = near[0];
+      near[0] = label;
+      top = g->value[j];
     }
-  if (!best) {
-    label[i] = new_region(r, value[i]);
+    n++;
+  }
+  return n;
+}
+
+static void place(const Grid *g, guint32 i, float height, Regions *r)
+{
+  guint32 near[8];
+  int n = labels_around(g, i, near);
+  if (n == 0) {
+    g->label[i] = new_region(r, g->value[i]);
     return;
   }
-  label[i] = best;
-  for (int k = 0; k < n; k++)
-    if (near[k] != best)
-      meet(r, best, near[k], value[i], h);
+  g->label[i] = near[0];
+  for (int k = 1; k < n; k++)
+    if (near[k] != near[0])
+      meet(r, near[0], near[k], g->value[i], height);
 }
 
 guint32 aw_watershed(const float *value, const guint8 *mask, int width, int height, double saddle_height,
@@ -140,9 +150,10 @@ guint32 aw_watershed(const float *value, const guint8 *mask, int width, int heig
   g_autofree Pixel *pixel = g_new(Pixel, n);
   g_autofree Pixel *spare = g_new(Pixel, n);
   sort_falling(value, mask, n_all, pixel, spare, n, lo, hi);
+  Grid grid = grid_of(value, label, width, height);
   Regions r = { g_new(guint32, 64), g_new(float, 64), 0, 64 };
   for (gsize k = 0; k < n; k++)
-    place(value, width, height, pixel[k].at, (float)saddle_height, &r, label);
+    place(&grid, pixel[k].at, (float)saddle_height, &r);
   g_autofree guint32 *number = g_new0(guint32, r.n + 1);
   guint32 n_out = 0;
   for (guint32 i = 1; i <= r.n; i++)
@@ -166,12 +177,15 @@ guint32 aw_flood_gaps(const float *value, const guint8 *mask, int width, int hei
   g_autofree Pixel *pixel = g_new(Pixel, n + 1);
   g_autofree Pixel *spare = g_new(Pixel, n + 1);
   sort_falling(value, gap, n_all, pixel, spare, n, lo, hi);
+  Grid grid = grid_of(value, label, width, height);
   for (gsize before = left + 1; left > 0 && left < before;) {
     before = left;
     gsize kept = 0;
     for (gsize k = 0; k < left; k++) {
-      label[pixel[k].at] = highest_neighbour(value, width, height, pixel[k].at, label);
-      if (!label[pixel[k].at])
+      guint32 near[8];
+      if (labels_around(&grid, pixel[k].at, near) > 0)
+        label[pixel[k].at] = near[0];
+      else
         pixel[kept++] = pixel[k];
     }
     left = kept;

@@ -39,8 +39,6 @@ static void judge(const AwSegmentWork *w, guint32 k)
   double f[AW_N_OBJECT_FEATURES];
   object_features(w, o, f);
   o->confidence = logistic(aw_object_odds(f));
-  if (w->probe && w->probe->object)
-    w->probe->object(f, k, w->probe->data);
 }
 
 AwSegmentInfo *aw_segment_infos(AwSegmentWork *w, GError **error)
@@ -50,17 +48,24 @@ AwSegmentInfo *aw_segment_infos(AwSegmentWork *w, GError **error)
   g_autofree guint8 *drop = g_new0(guint8, (gsize)n + 1);
   aw_segment_edges(w);
   for (guint32 k = 1; k <= n; k++) {
-    judge(w, k);
     const AwObject *o = aw_segment_object(w, k);
-    drop[k] = o->confidence < w->rules->debris_confidence && o->n_px < w->rules->debris_area * disc;
+    drop[k] = o->n_px == 0;
+    if (drop[k])
+      continue;
+    judge(w, k);
+    drop[k] = !(w->probe && w->probe->object) && o->confidence < w->rules->debris_confidence &&
+              o->n_px < w->rules->debris_area * disc;
   }
-  if (!w->probe || !w->probe->object)
-    aw_segment_renumber(w, drop);
+  aw_segment_renumber(w, drop);
   n = w->labels->n_labels;
   AwSegmentInfo *info = aw_try_alloc((gsize)n + 1, sizeof *info, "the nuclei's notes", error);
   for (guint32 k = 1; info && k <= n; k++) {
     const AwObject *o = aw_segment_object(w, k);
-    double height = o->plateau - o->background;
+    double f[AW_N_OBJECT_FEATURES], height = o->plateau - o->background;
+    if (w->probe && w->probe->object) {
+      object_features(w, o, f);
+      w->probe->object(f, k, w->probe->data);
+    }
     info[k] = (AwSegmentInfo){ o->confidence, height / MAX(w->scale.noise, 1e-6 * height), o->neck };
   }
   return info;

@@ -76,7 +76,7 @@ static void ring_backgrounds(const AwSegmentWork *w, guint32 *coarse, AwObject *
   int first = MAX((int)lround(w->rules->ring_from * r), 1), last = MAX((int)lround(w->rules->ring_to * r), first + 1);
   g_autoptr(GArray) reached = g_array_new(FALSE, FALSE, sizeof(AwSpot));
   g_autoptr(GArray) rounds = g_array_new(FALSE, FALSE, sizeof(gsize));
-  aw_spread_start(coarse, cw, ch, reached);
+  aw_label_edges(coarse, cw, ch, reached);
   spread(coarse, cw, ch, last, reached, rounds);
   gsize from = g_array_index(rounds, gsize, first), n = reached->len - from;
   guint32 n_labels = w->labels->n_labels;
@@ -127,35 +127,31 @@ double aw_segment_slope(const AwPlane *p, gsize at)
   gsize width = (gsize)p->width_px, x = at % width, y = at / width;
   gsize left = x > 0 ? at - 1 : at, right = x + 1 < width ? at + 1 : at, up = y > 0 ? at - width : at,
         down = y + 1 < (gsize)p->height_px ? at + width : at;
-  return hypot((double)(p->value[right] - p->value[left]), (double)(p->value[down] - p->value[up])) / 2;
+  double dx = (double)(p->value[right] - p->value[left]), dy = (double)(p->value[down] - p->value[up]);
+  return sqrt(dx * dx + dy * dy) / 2;
 }
 
 void aw_segment_edges(const AwSegmentWork *w)
 {
-  gsize width = (gsize)w->width_px, height = (gsize)w->height_px;
   AwObject *object = aw_segment_object(w, 0);
   for (guint32 k = 0; k <= w->labels->n_labels; k++)
-    object[k].n_px = object[k].n_edge = object[k].n_touching = object[k].slope = object[k].slope_square = 0;
-  for (gsize y = 0; y < height; y++)
-    for (gsize x = 0; x < width; x++) {
-      gsize i = y * width + x;
-      guint32 k = w->labels->label[i];
-      if (!k)
-        continue;
-      guint32 left = x > 0 ? w->labels->label[i - 1] : k, right = x + 1 < width ? w->labels->label[i + 1] : k,
-              up = y > 0 ? w->labels->label[i - width] : k, down = y + 1 < height ? w->labels->label[i + width] : k;
-      object[k].n_px++;
-      if (left == k && right == k && up == k && down == k)
-        continue;
-      if (left && right && up && down) {
-        object[k].n_touching++;
-        continue;
-      }
-      double slope = aw_segment_slope(w->smooth, i);
-      object[k].n_edge++;
-      object[k].slope += slope;
-      object[k].slope_square += slope * slope;
+    object[k].n_edge = object[k].n_touching = object[k].slope = object[k].slope_square = 0;
+  g_autoptr(GArray) edge = g_array_new(FALSE, FALSE, sizeof(AwSpot));
+  aw_label_edges(w->labels->label, w->width_px, w->height_px, edge);
+  for (guint i = 0; i < edge->len; i++) {
+    AwSpot s = g_array_index(edge, AwSpot, i);
+    AwObject *o = &object[s.label];
+    guint32 around[4];
+    aw_labels_around(w->labels->label, w->width_px, w->height_px, s.at, around);
+    if (around[0] && around[1] && around[2] && around[3]) {
+      o->n_touching++;
+      continue;
     }
+    double slope = aw_segment_slope(w->smooth, s.at);
+    o->n_edge++;
+    o->slope += slope;
+    o->slope_square += slope * slope;
+  }
 }
 
 double aw_object_edge_width(const AwSegmentWork *w, const AwObject *o)

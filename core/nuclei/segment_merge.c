@@ -7,6 +7,8 @@
 
 static void add_run(AwPiece *p, GArray *corners, int y, int x0, int x1)
 {
+  AwRect *b = &p->box;
+  *b = p->moments.n == 0 ? (AwRect){ x0, y, x1, y + 1 } : (AwRect){ MIN(b->x0, x0), b->y0, MAX(b->x1, x1), y + 1 };
   aw_moments_add_run(&p->moments, y, x0, x1);
   AwCorner ends[2] = { { x0, y }, { x1 - 1, y } };
   g_array_append_vals(corners, ends, x1 - x0 > 1 ? 2 : 1);
@@ -141,7 +143,9 @@ void aw_pieces_clear(AwPieces *p)
 /* The union of two pieces as a piece of its own; the caller frees its hull. */
 static AwPiece unite(const AwPiece *a, const AwPiece *b, float top)
 {
-  AwPiece u = { .moments = aw_moments_sum(&a->moments, &b->moments),
+  AwPiece u = { .box = { MIN(a->box.x0, b->box.x0), MIN(a->box.y0, b->box.y0), MAX(a->box.x1, b->box.x1),
+                         MAX(a->box.y1, b->box.y1) },
+                .moments = aw_moments_sum(&a->moments, &b->moments),
                 .distance_peak = MAX(a->distance_peak, b->distance_peak),
                 .blob_peak = MAX(a->blob_peak, b->blob_peak),
                 .land_peak = MAX(a->land_peak, b->land_peak),

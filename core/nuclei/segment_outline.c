@@ -7,74 +7,91 @@
 #include "image/rank.h"
 #include "nuclei/segment_spread.h"
 
-void aw_spread_start(const guint32 *label, int width, int height, GArray *edge)
+AW_HOT static void mark_row(const guint32 *restrict up, const guint32 *restrict mid, const guint32 *restrict down,
+                            guint8 *restrict mark, int width)
 {
-  for (int y = 0; y < height; y++)
-    for (int x = 0; x < width; x++) {
-      gsize i = (gsize)y * (gsize)width + (gsize)x;
-      if (!label[i])
-        continue;
-      gboolean free_edge = (x > 0 && !label[i - 1]) || (x + 1 < width && !label[i + 1]) ||
-                           (y > 0 && !label[i - (gsize)width]) || (y + 1 < height && !label[i + (gsize)width]);
-      if (free_edge) {
-        AwSpot s = { (guint32)i, label[i] };
-        g_array_append_val(edge, s);
-      }
+  for (int x = 1; x < width - 1; x++)
+    mark[x] = mid[x] && (mid[x - 1] != mid[x] || mid[x + 1] != mid[x] || up[x] != mid[x] || down[x] != mid[x]);
+}
+
+void aw_label_edges(const guint32 *label, int width, int height, GArray *edge)
+{
+  gsize w = (gsize)width, n_words = (w + 7) / 8;
+  g_autofree guint64 *words = g_new0(guint64, n_words);
+  guint8 *mark = (guint8 *)words;
+  for (int y = 0; y < height; y++) {
+    const guint32 *mid = label + (gsize)y * w, *up = y > 0 ? mid - w : mid, *down = y + 1 < height ? mid + w : mid;
+    mark_row(up, mid, down, mark, width);
+    for (gsize x = 0; x < w; x += MAX(w - 1, 1)) {
+      guint32 left = mid[x > 0 ? x - 1 : x], right = mid[x + 1 < w ? x + 1 : x];
+      mark[x] = mid[x] && (left != mid[x] || right != mid[x] || up[x] != mid[x] || down[x] != mid[x]);
     }
+    for (gsize i = 0; i < n_words; i++)
+      for (gsize x = 8 * i; words[i] && x < MIN(8 * i + 8, w); x++)
+        if (mark[x]) {
+          AwSpot s = { (guint32)((gsize)y * w + x), mid[x] };
+          g_array_append_val(edge, s);
+        }
+  }
+}
+
+void aw_labels_around(const guint32 *label, int width, int height, guint32 at, guint32 around[4])
+{
+  gsize w = (gsize)width, x = at % w, y = at / w;
+  around[0] = label[x > 0 ? at - 1 : at];
+  around[1] = label[x + 1 < w ? at + 1 : at];
+  around[2] = label[y > 0 ? at - w : at];
+  around[3] = label[y + 1 < (gsize)height ? at + w : at];
+}
+
+static void include(AwRect *box, int x, int y)
+{
+  *box = (AwRect){ MIN(box->x0, x), MIN(box->y0, y), MAX(box->x1, x + 1), MAX(box->y1, y + 1) };
+}
+
+/* Takes the unlabelled neighbours of a spot that are brighter than its object's cut. */
+static void grow_spot(AwSegmentWork *w, AwSpot s, GArray *reached)
+{
+  int width = w->width_px, x = (int)(s.at % (guint32)width), y = (int)(s.at / (guint32)width);
+  AwObject *o = aw_segment_object(w, s.label);
+  for (int d = 0; d < 4; d++) {
+    int i = x + (d == 1) - (d == 0), j = y + (d == 3) - (d == 2);
+    if (i < 0 || j < 0 || i >= width || j >= w->height_px)
+      continue;
+    gsize at = (gsize)j * (gsize)width + (gsize)i;
+    if (w->labels->label[at] || (double)w->smooth->value[at] <= o->cut)
+      continue;
+    w->labels->label[at] = s.label;
+    include(&o->box, i, j);
+    AwSpot n = { (guint32)at, s.label };
+    g_array_append_val(reached, n);
+  }
 }
 
 /* Labels grow over brighter ground than their own cut, one pixel a round. */
-static void grow(AwSegmentWork *w, const AwObject *object)
+static void grow(AwSegmentWork *w)
 {
-  int width = w->width_px, height = w->height_px, n_rounds = (int)lround(0.35 * w->scale.radius_px);
-  guint32 *label = w->labels->label;
+  int n_rounds = (int)lround(w->rules->grow_radii * w->scale.radius_px);
   g_autoptr(GArray) reached = g_array_new(FALSE, FALSE, sizeof(AwSpot));
-  aw_spread_start(label, width, height, reached);
-  gsize from = 0;
-  for (int round = 0; round < n_rounds; round++) {
-    gsize to = reached->len;
-    for (gsize k = from; k < to; k++) {
-      AwSpot s = g_array_index(reached, AwSpot, k);
-      int x = (int)(s.at % (guint32)width), y = (int)(s.at / (guint32)width);
-      const int dx[4] = { -1, 1, 0, 0 }, dy[4] = { 0, 0, -1, 1 };
-      for (int d = 0; d < 4; d++) {
-        int i = x + dx[d], j = y + dy[d];
-        if (i < 0 || j < 0 || i >= width || j >= height)
-          continue;
-        gsize at = (gsize)j * (gsize)width + (gsize)i;
-        if (label[at] || (double)w->smooth->value[at] <= object[s.label].cut)
-          continue;
-        label[at] = s.label;
-        AwSpot n = { (guint32)at, s.label };
-        g_array_append_val(reached, n);
-      }
-    }
-    from = to;
-  }
+  aw_label_edges(w->labels->label, w->width_px, w->height_px, reached);
+  for (guint round = 0, from = 0, to = reached->len; (int)round < n_rounds; round++, from = to, to = reached->len)
+    for (guint k = from; k < to; k++)
+      grow_spot(w, g_array_index(reached, AwSpot, k), reached);
 }
 
-static void find_boxes(const AwSegmentWork *w, AwObject *object)
+AW_HOT static void mask_row(const guint32 *restrict label, const float *restrict value, guint32 k, float cut,
+                            guint8 *restrict mask, int width)
 {
-  for (guint32 k = 0; k <= w->labels->n_labels; k++)
-    object[k].box = (AwRect){ G_MAXINT, G_MAXINT, 0, 0 };
-  for (int y = 0; y < w->height_px; y++) {
-    const guint32 *row = w->labels->label + (gsize)y * (gsize)w->width_px;
-    for (int x = 0; x < w->width_px; x++)
-      if (row[x]) {
-        AwRect *b = &object[row[x]].box;
-        *b = (AwRect){ MIN(b->x0, x), MIN(b->y0, y), MAX(b->x1, x + 1), MAX(b->y1, y + 1) };
-      }
-  }
+  for (int x = 0; x < width; x++)
+    mask[x] = (label[x] == k) & (value[x] > cut);
 }
 
 static void take_mask(const AwSegmentWork *w, guint32 k, AwRect b, double cut, guint8 *mask)
 {
-  for (int y = b.y0; y < b.y1; y++) {
-    const guint32 *label = w->labels->label + (gsize)y * (gsize)w->width_px;
-    const float *value = aw_plane_row(w->smooth, y);
-    for (int x = b.x0; x < b.x1; x++)
-      *mask++ = label[x] == k && (double)value[x] > cut;
-  }
+  int width = b.x1 - b.x0;
+  for (int y = b.y0; y < b.y1; y++, mask += width)
+    mask_row(w->labels->label + (gsize)y * (gsize)w->width_px + b.x0, aw_plane_row(w->smooth, y) + b.x0, k, (float)cut,
+             mask, width);
 }
 
 static void give_mask(AwSegmentWork *w, guint32 k, AwRect b, const guint8 *mask)
@@ -99,6 +116,7 @@ static void measure_shape(AwObject *o, const guint8 *mask, int width, int height
     corner[n++] = (AwCorner){ r->x0, r->y };
     corner[n++] = (AwCorner){ r->x1 - 1, r->y };
   }
+  o->n_px = o->shape.n;
   o->convexity = n ? aw_hull_convexity(corner, aw_hull(corner, n), o->shape.n) : 0;
 }
 
@@ -116,9 +134,10 @@ static void trim(AwSegmentWork *w, guint32 k, GByteArray *buffer)
   aw_mask_fill_holes(mask, width, height, (gint64)n);
   aw_mask_open(mask, width, height, mask + n);
   double left = (double)aw_mask_keep_largest(mask, width, height), r = w->scale.radius_px;
-  if (left < MAX(15, w->rules->smallest_area * G_PI * r * r))
+  if (left < MAX(15, w->rules->smallest_area * G_PI * r * r)) {
     memset(mask, 0, n);
-  else
+    o->n_px = 0;
+  } else
     measure_shape(o, mask, width, height);
   give_mask(w, k, b, mask);
 }
@@ -133,7 +152,7 @@ void aw_segment_renumber(AwSegmentWork *w, const guint8 *drop)
     guint32 k = w->labels->label[i];
     if (!k)
       continue;
-    if (!number[k] && !(drop && drop[k])) {
+    if (!number[k] && !drop[k]) {
       number[k] = objects->len;
       g_array_append_val(objects, *aw_segment_object(w, k));
     }
@@ -148,12 +167,9 @@ gboolean aw_segment_outlines(AwSegmentWork *w, GError **error)
 {
   if (!aw_segment_levels(w, error))
     return FALSE;
-  grow(w, aw_segment_object(w, 0));
-  find_boxes(w, aw_segment_object(w, 0));
+  grow(w);
   g_autoptr(GByteArray) buffer = g_byte_array_new();
   for (guint32 k = 1; k <= w->labels->n_labels; k++)
-    if (aw_segment_object(w, k)->box.x1 > 0)
-      trim(w, k, buffer);
-  aw_segment_renumber(w, NULL);
+    trim(w, k, buffer);
   return TRUE;
 }

@@ -117,10 +117,16 @@ static void note_links(AwSegmentWork *w, const AwPieces *p, const guint32 *numbe
 static void write_objects(AwSegmentWork *w, const AwCluster *c, const AwPieces *p)
 {
   g_autofree guint32 *number = g_new0(guint32, p->n + 1);
+  int band = p->n > 1 ? (int)lround(w->rules->line_band * w->scale.radius_px) : 0;
   for (guint32 k = 1; k <= p->n; k++)
     if (p->piece[k].parent == k) {
       number[k] = ++w->labels->n_labels;
-      AwObject o = { .split_odds = -8, .merge_odds = p->piece[k].merge_odds };
+      AwRect b = p->piece[k].box;
+      AwObject o = { .box = { MAX(b.x0 + c->box.x0 - band, 0), MAX(b.y0 + c->box.y0 - band, 0),
+                              MIN(b.x1 + c->box.x0 + band, w->width_px), MIN(b.y1 + c->box.y0 + band, w->height_px) },
+                     .n_px = p->piece[k].moments.n,
+                     .split_odds = -8,
+                     .merge_odds = p->piece[k].merge_odds };
       g_array_append_val(w->objects, o);
     }
   note_links(w, p, number);
@@ -143,7 +149,10 @@ static void redraw_lines(AwCluster *c, const AwPieces *p, const AwSegmentWork *w
   for (gsize i = 0; i < n; i++)
     if (c->label[i])
       c->label[i] = aw_pieces_root(p, c->label[i]);
-  if (n_rounds < 1)
+  gboolean parted = FALSE;
+  for (guint i = 0; i < p->links->len && !parted; i++)
+    parted = g_array_index(p->links, AwLink, i).a != g_array_index(p->links, AwLink, i).b;
+  if (n_rounds < 1 || !parted)
     return;
   g_autofree guint32 *old = g_new(guint32, n);
   g_autofree guint8 *near = g_new0(guint8, n);
@@ -201,6 +210,34 @@ static gboolean work_cluster(AwSegmentWork *w, const AwMaskRuns *runs, const gsi
   return ok;
 }
 
+/* A component so close to an ellipse of ordinary size that nothing in it can be parted. */
+static gboolean is_plain(const AwSegmentWork *w, const AwMaskRuns *runs, const gsize *first, gsize n_runs, double n_px)
+{
+  double r = w->scale.radius_px;
+  if (n_px > w->rules->plain_area * G_PI * r * r)
+    return FALSE;
+  AwMoments m = { 0 };
+  for (gsize i = 0; i < n_runs; i++) {
+    const AwMaskRun *run = &runs->run[first[i]];
+    aw_moments_add_run(&m, run->y, run->x0, run->x1);
+  }
+  return aw_moments_ellipse(&m) >= w->rules->plain_ellipse;
+}
+
+static void write_plain(AwSegmentWork *w, const AwMaskRuns *runs, const gsize *first, gsize n_runs)
+{
+  const AwMaskPart *part = &runs->part[runs->run[first[0]].part];
+  AwObject o = { .box = part->box, .n_px = (double)part->n_px, .split_odds = -8, .merge_odds = 8 };
+  guint32 k = ++w->labels->n_labels;
+  g_array_append_val(w->objects, o);
+  for (gsize i = 0; i < n_runs; i++) {
+    const AwMaskRun *run = &runs->run[first[i]];
+    guint32 *row = w->labels->label + (gsize)run->y * (gsize)w->width_px;
+    for (int x = run->x0; x < run->x1; x++)
+      row[x] = k;
+  }
+}
+
 gboolean aw_segment_pieces(AwSegmentWork *w, GError **error)
 {
   g_autoptr(AwMaskRuns) runs = aw_mask_runs(w->mask, w->width_px, w->height_px, 1, TRUE);
@@ -217,6 +254,10 @@ gboolean aw_segment_pieces(AwSegmentWork *w, GError **error)
     const AwMaskPart *part = &runs->part[k];
     if ((double)part->n_px < least)
       continue;
+    if (is_plain(w, runs, order + start[k], start[k + 1] - start[k], (double)part->n_px)) {
+      write_plain(w, runs, order + start[k], start[k + 1] - start[k]);
+      continue;
+    }
     if (!work_cluster(w, runs, order + start[k], start[k + 1] - start[k], part->box, error))
       return FALSE;
   }

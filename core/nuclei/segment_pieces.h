@@ -21,6 +21,7 @@ typedef struct {
 /* One piece, or several merged. */
 typedef struct {
   guint32 parent; /* itself, or the piece it was merged into */
+  AwRect box;     /* in the cluster, before lines are redrawn */
   AwMoments moments;
   AwCorner *hull;
   gsize n_hull;

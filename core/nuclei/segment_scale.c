@@ -11,6 +11,8 @@
 
 #define MIN_RADIUS_PX 3.0
 #define MAX_RADIUS_PX 60.0
+#define RADIUS_SHARE 0.92 /* R is meant as the half width of a nucleus' inner part */
+#define PEAK_LOSS_PX 0.75 /* what smoothing by 1 px takes from the peak of a cone, less half a pixel of the grid */
 
 static gsize n_px(const AwPlane *p)
 {
@@ -98,7 +100,7 @@ static double radius_above(const AwPlane *plane, double level, GArray *value, GA
   if (!soft)
     return NAN;
   find_peaks(soft, 1.5, TRUE, value, weight);
-  return median_of(value, weight);
+  return median_of(value, weight) + PEAK_LOSS_PX;
 }
 
 static AwPlane *above_ground(const AwPlane *plane, double radius_px, const AwSegmentRules *rules, GError **error)
@@ -133,7 +135,7 @@ static double first_radius(const AwPlane *smooth, GArray *value, GArray *weight,
     if (!small)
       return NAN;
     r = radius_above(small, aw_otsu(small->value, n_px(small)), value, weight, error);
-    if (r >= 5)
+    if (r >= 3)
       return MIN(factor * r, MAX_RADIUS_PX);
   }
   return CLAMP(r, MIN_RADIUS_PX, MAX_RADIUS_PX);
@@ -145,7 +147,7 @@ static gboolean refine(AwSegmentWork *w, double radius_px, GArray *value, GArray
   double handle = w->settings->nucleus_width_px / 2;
   s->radius_px = handle > 0 ? handle : radius_px;
   for (int pass = 0; pass < 2; pass++) {
-    int factor = factor_for(s->radius_px, 6);
+    int factor = factor_for(s->radius_px, 4);
     g_autoptr(AwPlane) coarse = aw_plane_reduce(w->smooth, factor, error);
     g_autoptr(AwPlane) clear = coarse ? above_ground(coarse, s->radius_px / factor, w->rules, error) : NULL;
     if (!clear)
@@ -154,7 +156,7 @@ static gboolean refine(AwSegmentWork *w, double radius_px, GArray *value, GArray
         typical_height(clear, s->radius_px / factor, s->noise / factor, w->rules, &s->weight, value, weight, error);
     if (!(s->height > 0))
       break;
-    double r = factor * radius_above(clear, 0.42 * s->height, value, weight, error);
+    double r = RADIUS_SHARE * factor * radius_above(clear, 0.42 * s->height, value, weight, error);
     if (!(handle > 0) && isfinite(r))
       s->radius_px = CLAMP(r, MIN_RADIUS_PX, MAX_RADIUS_PX);
   }

@@ -9,7 +9,10 @@ typedef struct {
   guint32 at, label;
 } AwSpot;
 
-/* Appends every label pixel with an unlabelled neighbour up, down, left or right, in scan order. */
-void aw_spread_start(const guint32 *label, int width, int height, GArray *edge);
+/* Appends every label pixel that has another label or none above, below, left or right of it, in scan order. */
+void aw_label_edges(const guint32 *label, int width, int height, GArray *edge);
+
+/* The labels left, right, above and below a pixel; beyond the edge its own. */
+void aw_labels_around(const guint32 *label, int width, int height, guint32 at, guint32 around[4]);
 
 #endif

@@ -13,21 +13,23 @@
 
 /* The numbers of the method, all free of scale: lengths in R, brightness in heights, noise in its deviation. */
 typedef struct {
-  double blur_px;       /* first smoothing */
-  double ground_radii;  /* disc of the background opening */
-  double height_blur;   /* smoothing before heights are read, R */
-  double detect_height; /* detection level over the typical height ... */
-  double detect_noise;  /* ... or over the noise, whichever is higher */
-  double blob_scale;    /* width of the blob filter, R */
-  double blob_floor;    /* added under the logarithm, over the typical height */
-  double zone_saddle;   /* dynamics below which blobs are one zone */
-  double zone_level;    /* first outline, part of the zone's plateau */
-  double piece_saddle;  /* dynamics below which pieces are one */
-  double piece_blur;    /* smoothing of the distance, R */
-  double blob_weight;   /* blob against distance in the piece landscape */
+  double blur_px;                   /* first smoothing */
+  double ground_radii;              /* disc of the background opening */
+  double height_blur;               /* smoothing before heights are read, R */
+  double detect_height;             /* detection level over the typical height ... */
+  double detect_noise;              /* ... or over the noise, whichever is higher */
+  double blob_scale;                /* width of the blob filter, R */
+  double blob_floor;                /* added under the logarithm, over the typical height */
+  double zone_saddle;               /* dynamics below which blobs are one zone */
+  double zone_level;                /* first outline, part of the zone's plateau */
+  double piece_saddle;              /* dynamics below which pieces are one */
+  double piece_blur;                /* smoothing of the distance, R */
+  double blob_weight;               /* blob against distance in the piece landscape */
+  double plain_area, plain_ellipse; /* a component is one nucleus up to this size, when it is this elliptic */
   double line_band, line_distance;
   double merge_bias;         /* added to the merge log-odds */
   double outline_shift;      /* added to the level of every outline */
+  double grow_radii;         /* how far the final outline may lie outside the first one, R */
   double ring_from, ring_to; /* ring of the local background, R from the nucleus */
   double ring_quantile;
   double smallest_area;     /* of a nucleus, over pi R^2 */
@@ -67,7 +69,7 @@ typedef struct {
   double split_odds; /* log-odds of being one with a neighbour that it was kept apart from; the largest */
   double merge_odds; /* log-odds of the least certain merge inside */
   double background, plateau, cut;
-  double n_px;                        /* first outline */
+  double n_px;                        /* pixels; of the first, then of the final outline (0: nothing left) */
   double n_edge, slope, slope_square; /* free edge pixels, and sums over their slopes per px */
   double n_ring, ring_spread;         /* pixels of the background ring, and their 80 % range */
   AwMoments shape;                    /* final outline */
@@ -109,7 +111,7 @@ gboolean aw_segment_pieces(AwSegmentWork *w, GError **error);
 /* Background, plateau and outline level of every label. */
 gboolean aw_segment_levels(AwSegmentWork *w, GError **error);
 
-/* Counts the pixels, free and touching edge pixels of every label and sums the slopes of the free ones. */
+/* Counts the free and touching edge pixels of every label and sums the slopes of the free ones. */
 void aw_segment_edges(const AwSegmentWork *w);
 
 /* Final outlines; drops what is too small; numbers labels in scan order. Then info and confidence. */

@@ -1,6 +1,7 @@
 /* Aimwell - SPDX-License-Identifier: GPL-3.0-or-later */
 #include <float.h>
 #include <math.h>
+#include <string.h>
 
 #include "base/limits.h"
 #include "image/smooth.h"
@@ -10,6 +11,13 @@
 static gsize n_coarse(const AwSegmentWork *w)
 {
   return (gsize)w->coarse->width_px * (gsize)w->coarse->height_px;
+}
+
+AW_HOT static void laplace_row(const float *restrict up, const float *restrict mid, const float *restrict down,
+                               float scale, float *restrict out, int width)
+{
+  for (int x = 1; x < width - 1; x++)
+    out[x] = scale * ((up[x] + down[x]) + (mid[x - 1] + mid[x + 1]) - 4 * mid[x]);
 }
 
 /*
@@ -26,10 +34,30 @@ static AwPlane *blob_filter(const AwPlane *log_image, double sigma, GError **err
     const float *mid = aw_plane_row(soft, y), *up = aw_plane_row(soft, MAX(y - 1, 0)),
                 *down = aw_plane_row(soft, MIN(y + 1, h - 1));
     float *row = aw_plane_row(out, y);
-    for (int x = 0; x < w; x++)
+    laplace_row(up, mid, down, scale, row, w);
+    for (int x = 0; x < w; x += MAX(w - 1, 1))
       row[x] = scale * ((up[x] + down[x]) + (mid[MAX(x - 1, 0)] + mid[MIN(x + 1, w - 1)]) - 4 * mid[x]);
   }
   return out;
+}
+
+/* Natural logarithm of x >= 1 to 2e-6: exponent by its bits, mantissa by the series of artanh. */
+static inline float fast_log(float x)
+{
+  guint32 bits;
+  memcpy(&bits, &x, sizeof bits);
+  guint32 mantissa = (bits & 0x007fffffu) | 0x3f800000u;
+  float m, e = (float)(gint32)(bits >> 23) - 127.f;
+  memcpy(&m, &mantissa, sizeof m);
+  float t = (m - 1.4142135f) / (m + 1.4142135f), q = t * t;
+  return (e + 0.5f) * 0.69314718f + 2 * t * (1 + q * (1.f / 3 + q * (1.f / 5 + q * (1.f / 7))));
+}
+
+AW_HOT static void log_row(const float *restrict value, const float *restrict ground, float inverse_floor,
+                           float *restrict out, int width)
+{
+  for (int x = 0; x < width; x++)
+    out[x] = fast_log(1 + (value[x] - ground[x]) * inverse_floor);
 }
 
 static gboolean find_blobs(AwSegmentWork *w, GError **error)
@@ -38,8 +66,9 @@ static gboolean find_blobs(AwSegmentWork *w, GError **error)
   if (!log_image)
     return FALSE;
   float floor_value = (float)MAX(w->rules->blob_floor * w->scale.height, w->scale.noise);
-  for (gsize i = 0; i < n_coarse(w); i++)
-    log_image->value[i] = logf(1 + (w->coarse->value[i] - w->ground->value[i]) / floor_value);
+  for (int y = 0; y < w->coarse->height_px; y++)
+    log_row(aw_plane_row(w->coarse, y), aw_plane_row(w->ground, y), 1 / floor_value, aw_plane_row(log_image, y),
+            w->coarse->width_px);
   double sigma = MAX(w->rules->blob_scale * w->scale.radius_px, 1.5) / w->factor;
   w->blob = blob_filter(log_image, sigma, error);
   return w->blob != NULL;
@@ -87,14 +116,18 @@ AW_HOT static void compare_row(const float *restrict a, const float *restrict b,
     out[x] = a[x] > b[x];
 }
 
-/* Every pixel against the threshold of its coarse pixel. */
+/* Every pixel against the threshold of its coarse pixel; the threshold row is spread once per coarse row. */
 static void cut_rows(AwSegmentWork *w)
 {
+  int f = w->factor;
   g_autofree float *row = g_new(float, (gsize)w->width_px);
   for (int y = 0; y < w->height_px; y++) {
-    const float *cut = aw_plane_row(w->cut, y / w->factor);
-    for (int x = 0; x < w->width_px; x++)
-      row[x] = cut[x / w->factor];
+    const float *cut = aw_plane_row(w->cut, y / f);
+    if (f == 1)
+      memcpy(row, cut, (gsize)w->width_px * sizeof *row);
+    for (int x = 0; f > 1 && y % f == 0 && x < w->width_px; x += f, cut++)
+      for (int k = 0; k < f && x + k < w->width_px; k++)
+        row[x + k] = *cut;
     compare_row(aw_plane_row(w->smooth, y), row, w->mask + (gsize)y * (gsize)w->width_px, w->width_px);
   }
 }
