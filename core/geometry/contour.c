@@ -7,7 +7,7 @@
 
 /* The smoothed mask has whole values from 0 to FULL; the level lies between two of them, so that no pixel is on it. */
 #define FULL 256
-#define LEVEL (FULL / 2 - 0.5)
+#define LEVEL (0.5 * FULL - 0.5)
 #define TOLERANCE_PX 0.1
 /* Smoothing along the line: points this far apart, standard deviation per square root of the radius in px. */
 #define SPACING_PX 2.5

@@ -145,8 +145,8 @@ double aw_outline_distance(const AwScanPoint *a, gsize n_a, const AwScanPoint *b
   Circle circle = circle_around(b, n_b);
   AwScanPoint near_a = a[0], near_b = b[0];
   nearest_vertex(a, n_a, circle.centre, &near_a);
-  double best = sqrt(nearest_vertex(b, n_b, near_a, &near_b));
-  best = sqrt(nearest_vertex(a, n_a, near_b, &near_a));
+  nearest_vertex(b, n_b, near_a, &near_b);
+  double best = sqrt(nearest_vertex(a, n_a, near_b, &near_a));
   double half_edge = longest_edge(a, n_a) / 2;
   for (gsize i = 0, j = n_a - 1; i < n_a && best > 0; j = i++) {
     /* No point of an edge is farther from one of its ends than half of the longest edge. */

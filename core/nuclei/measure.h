@@ -24,7 +24,7 @@ AwPlacement aw_placement_loose(int width_px, int height_px);
  *
  * info: of the segmentation, or NULL (confidence is then 1). saturation_level: pixel value from which a pixel counts
  * as saturated; 0 means none. Border is judged against the whole frame. Isolation, area_ratio and the focus flag are
- * set for this image alone; aw_scan_finish sets them again over a whole dish.
+ * set for this image alone; aw_scan_segment sets them again over a whole dish.
  * Sources: docs/methods-nuclei.md, "Features".
  */
 GPtrArray *aw_measure_nuclei(const AwImage *image, const AwLabels *labels, const AwSegmentInfo *info,

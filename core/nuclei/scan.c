@@ -40,7 +40,7 @@ static GArray *collect_marks(const GArray *views, const AwScanFrame *frames, gsi
 static gboolean find_map(const GArray *views, const AwScanFrame *frames, gsize n_frames, const AwScanSettings *settings,
                          AwScanResult *result, GError **error)
 {
-  g_autofree AwOverlapFrame *overlap = g_new(AwOverlapFrame, n_frames + 1);
+  g_autofree AwOverlapFrame *overlap = g_new0(AwOverlapFrame, n_frames + 1);
   g_autoptr(GArray) marks = collect_marks(views, frames, n_frames, overlap);
   g_auto(AwOverlapFit) fit = { 0 };
   AwOverlapMode mode = settings->fit_map ? AW_OVERLAP_FIT : AW_OVERLAP_CHECK;

@@ -41,8 +41,9 @@ G_DEFINE_AUTOPTR_CLEANUP_FUNC(AwScanResult, aw_scan_result_free)
  *
  * Frames (and, past AW_MAX_BLOCK_SIDE_PX, overlapping blocks of a frame) are worked in parallel; item order decides
  * every reduction, so the result does not depend on n_threads. Memory stays bounded by a few blocks per thread plus
- * the nuclei. AW_ERROR_RANGE when the overlaps contradict the entered map: a mirrored axis or a wrong pixel size is
- * named with the value that would fit.
+ * the nuclei. AW_ERROR_RANGE when the overlaps contradict the map to start from (fit_map allows for 15 degrees and
+ * 10 %): a mirrored axis or a wrong pixel size is named with the map that would fit. A scan without any nucleus gives
+ * an empty result, not an error. ids stay 0. Method: docs/methods-nuclei.md.
  */
 AwScanResult *aw_scan_segment(const AwScanFrame *frames, gsize n_frames, const AwScanSettings *settings,
                               AwProgress *progress, GError **error);

@@ -107,8 +107,8 @@ gint64 aw_runs_hull_px(const AwRun *runs, gsize n_runs)
   g_return_val_if_fail(n_runs > 0, 0);
   AwRect box = aw_runs_box(runs, n_runs);
   gsize n_half = 2 * (gsize)(box.y1 - box.y0) + 1;
-  g_autofree gint64 *left = g_new(gint64, n_half);
-  g_autofree gint64 *right = g_new(gint64, n_half);
+  g_autofree gint64 *left = g_new0(gint64, n_half);
+  g_autofree gint64 *right = g_new0(gint64, n_half);
   for (gsize i = 0; i < n_half; i++) {
     left[i] = G_MAXINT64;
     right[i] = G_MININT64;
@@ -120,8 +120,8 @@ gint64 aw_runs_hull_px(const AwRun *runs, gsize n_runs)
     widen(&left[y], &right[y], x0 - 1, x1 + 1);
     widen(&left[y + 1], &right[y + 1], x0, x1);
   }
-  g_autofree HalfPoint *chain_l = g_new(HalfPoint, n_half);
-  g_autofree HalfPoint *chain_r = g_new(HalfPoint, n_half);
+  g_autofree HalfPoint *chain_l = g_new0(HalfPoint, n_half);
+  g_autofree HalfPoint *chain_r = g_new0(HalfPoint, n_half);
   make_chain(left, n_half, 1, chain_l);
   make_chain(right, n_half, -1, chain_r);
   return count_inside(chain_l, chain_r, n_half);
