@@ -125,19 +125,32 @@ static gboolean start_well(const AwTourProblem *p, AwTourArray **array, AwProgre
   return TRUE;
 }
 
+/* Notes the tour's order and cost if it is better than any before; returns the best cost. */
+static double keep_better(const AwTourProblem *p, const AwTourArray *array, AwTour *tour)
+{
+  gboolean backwards;
+  double total = aw_tour_problem_total(p, array->order, &backwards);
+  if (total < tour->final) {
+    tour->final = total;
+    aw_tour_problem_read(p, array->order, tour->order);
+  }
+  return tour->final;
+}
+
 static gboolean search(const AwTourProblem *p, AwTour *tour, AwTourArray **array, AwTourChainLimits *limits,
                        AwProgress *progress, GError **error)
 {
-  gboolean backwards;
+  tour->nearest = keep_better(p, *array, tour);
+  aw_progress_report(progress, "tour", 0.1);
   if (!aw_tour_two_opt(p, *array, progress, error))
     return FALSE;
-  tour->two_opt = aw_tour_problem_total(p, (*array)->order, &backwards);
+  tour->two_opt = keep_better(p, *array, tour);
   aw_progress_report(progress, "tour", 0.2);
   if (p->n > AW_TOUR_MAX_EXACT &&
       (!start_well(p, array, progress, error) || !aw_tour_chain(p, *array, limits, progress, error)))
     return FALSE;
   tour->n_steps_used = limits->n_used;
-  aw_tour_problem_read(p, (*array)->order, tour->order);
+  keep_better(p, *array, tour);
   return TRUE;
 }
 
@@ -149,9 +162,9 @@ static gboolean find(const AwStop *stops, AwTour *tour, const AwTourSettings *se
   guint32 *start = p ? aw_tour_start_nearest(p, progress, error) : NULL;
   if (!start)
     return FALSE;
-  tour->nearest = aw_tour_problem_total(p, start, &backwards);
-  p->least_gain = tour->nearest * (1e-9 / p->n + 1e-14);
+  p->least_gain = aw_tour_problem_total(p, start, &backwards) * (1e-9 / p->n + 1e-14);
   g_autoptr(AwTourArray) array = aw_tour_array_new(start, p->n, error);
+  tour->final = INFINITY;
   return array && search(p, tour, &array, limits, progress, error);
 }
 

@@ -9,6 +9,8 @@
  * where it is; the others are written into the room between its ends. Pieces that keep both place and direction at
  * either side of that room are left alone, so that a local exchange costs a local write. */
 
+#define MAX_WRITE 50000 /* longer ones save too little for their time (Johnson & McGeoch 1997) */
+
 typedef struct {
   guint32 begin, count; /* positions, cyclic */
 } Piece;
@@ -24,7 +26,7 @@ AwTourArray *aw_tour_array_new(guint32 *order, guint32 n, GError **error)
   g_autoptr(AwTourArray) a = g_new0(AwTourArray, 1);
   a->n = n;
   a->order = order;
-  a->max_write = n;
+  a->max_write = MIN(n, MAX_WRITE);
   if (!(a->pos = aw_try_alloc(n, sizeof *a->pos, "a tour", error)) ||
       !(a->scratch = aw_try_alloc(n, sizeof *a->scratch, "a tour", error)))
     return NULL;

@@ -14,21 +14,25 @@
 #define STRIDE 10           /* nodes from one kick to the next */
 #define WINDOW 100          /* nodes among which the kick is drawn */
 #define BATCH 64            /* steps between looks at clock and cancel */
+#define MIN_ROUND 1000      /* steps between looks at what was gained */
 #define START_HEAT 0.1      /* of the mean cost of an edge */
-#define NOMINAL_STEP_S 2e-5 /* what one step is taken to cost, so that results do not depend on the machine */
+#define NOMINAL_STEP_S 3e-5 /* what one step is taken to cost, so that results do not depend on the machine */
 
 typedef struct {
   AwTourDeep deep;
   AwRandom random;
   guint32 site;             /* where the kicks are at: they sweep over the nodes, which keeps memory near */
   double heat;              /* how much worse a tour may become */
+  double total;             /* true cost now */
+  double round_saved;       /* best_saved when the present round of the anytime rule began */
+  gint64 round_begun;       /* and the steps made by then */
   double saved, best_saved; /* since the first kick, now and at the best */
   guint32 *best;            /* the order at the best */
 } Chain;
 
 gint64 aw_tour_default_steps(gsize n)
 {
-  return (gint64)MIN(10 * n, 10000 + n / 2);
+  return (gint64)MIN(8 * n, 8000 + n / 4);
 }
 
 static guint32 next_site(Chain *c)
@@ -64,7 +68,14 @@ static double kick(Chain *c)
   return saved;
 }
 
-/* One kick and its repair; a worse tour is kept with a chance that falls with the loss and with time. Returns what was
+static double whole(const Chain *c)
+{
+  gboolean backwards;
+  return aw_tour_problem_total(c->deep.p, c->deep.tour->order, &backwards);
+}
+
+/* One kick and its repair. The deep search sees the mean cost of the two directions; whether its result is kept is
+ * decided by the true cost. A worse tour is kept with a chance that falls with the loss and with time. Returns what was
  * saved. */
 static double step(Chain *c)
 {
@@ -74,6 +85,8 @@ static double step(Chain *c)
   if (!isfinite(saved))
     return 0;
   saved += aw_tour_deep_run(&c->deep);
+  if (c->deep.p->asymmetric)
+    saved = c->total - whole(c);
   if (saved >= 0 || saved > c->heat * log(1 - aw_random_unit(&c->random)))
     return saved;
   aw_tour_array_undo(tour);
@@ -91,7 +104,9 @@ static double done_frac(const AwTourChainLimits *limits, gint64 begun_us)
 static void batch(Chain *c, AwTourChainLimits *limits)
 {
   for (guint i = 0; i < BATCH && (limits->until_us || limits->n_used < limits->n_steps); i++) {
-    c->saved += step(c);
+    double saved = step(c);
+    c->saved += saved;
+    c->total -= saved;
     limits->n_used++;
   }
   if (c->saved <= c->best_saved)
@@ -100,12 +115,25 @@ static void batch(Chain *c, AwTourChainLimits *limits)
   memcpy(c->best, c->deep.tour->order, c->deep.p->n * sizeof *c->best);
 }
 
+/* The anytime rule: over when the last round of steps saved less stage time than such a round is taken to cost. */
+static gboolean is_worth_it(Chain *c, const AwTourChainLimits *limits)
+{
+  gint64 round = MAX(MIN_ROUND, c->deep.p->n / 2);
+  if (limits->speed <= 0 || limits->n_used - c->round_begun < round)
+    return TRUE;
+  double gain_s = (c->best_saved - c->round_saved) / limits->speed;
+  gboolean worth = gain_s >= NOMINAL_STEP_S * (double)(limits->n_used - c->round_begun);
+  c->round_begun = limits->n_used;
+  c->round_saved = c->best_saved;
+  return worth;
+}
+
 static gboolean run(Chain *c, AwTourChainLimits *limits, AwProgress *progress, GError **error)
 {
-  gboolean backwards;
   gint64 begun_us = g_get_monotonic_time();
-  double frac, heat = START_HEAT * aw_tour_problem_total(c->deep.p, c->deep.tour->order, &backwards) / c->deep.p->n;
-  while ((frac = done_frac(limits, begun_us)) < 1) {
+  c->total = whole(c);
+  double frac, heat = START_HEAT * c->total / c->deep.p->n;
+  while ((frac = done_frac(limits, begun_us)) < 1 && is_worth_it(c, limits)) {
     c->heat = heat * (1 - frac);
     batch(c, limits);
     aw_progress_report(progress, "tour", 0.3 + 0.7 * frac);

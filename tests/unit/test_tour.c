@@ -129,6 +129,75 @@ static void test_exhaustive_nine(void)
   }
 }
 
+static void test_exhaustive_time(void)
+{
+  compare_with_exhaustive(0, 8);
+}
+
+static void test_exhaustive_backlash(void)
+{
+  compare_with_exhaustive(13, 8);
+}
+
+static void test_exhaustive_backlash_nine(void)
+{
+  double extra = 21;
+  for (Mode mode = OPEN; mode <= CLOSED; mode++) {
+    AwTourSettings set = settings_for(mode, MAX_N);
+    set.cost = backlash_cost;
+    set.asymmetric = TRUE;
+    set.cost_data = &extra;
+    g_autofree AwStop *stops = random_stops(MAX_N, 60 + mode, 100);
+    g_autoptr(AwTour) tour = find(stops, MAX_N, &set);
+    g_assert_cmpfloat_with_epsilon(tour->final, exhaustive(stops, MAX_N, &set), 1e-9);
+  }
+}
+
+/* A searched tour never costs more than the same tour run backwards. */
+static void test_backlash(void)
+{
+  double extra = 13;
+  for (Mode mode = OPEN; mode < N_MODES; mode++) {
+    AwTourSettings set = settings_for(mode, 60);
+    set.cost = backlash_cost;
+    set.asymmetric = TRUE;
+    set.cost_data = &extra;
+    set.n_steps = 3000;
+    g_autofree AwStop *stops = random_stops(60, 70 + mode, 1000);
+    g_autoptr(AwTour) tour = find(stops, 60, &set);
+    g_autofree guint32 *turned = g_new(guint32, 60);
+    for (gsize i = 0; i < 60; i++)
+      turned[i] = tour->order[59 - i];
+    if (keeps_ends(turned, 60, &set) && !set.from && !set.to)
+      g_assert_cmpfloat(tour->final, <=, aw_tour_cost(stops, 60, turned, &set) + 1e-9);
+  }
+}
+
+/* The anytime rule ends early when a saved um is worth little, and repeats. */
+static void test_anytime(void)
+{
+  AwTourSettings set = settings_for(OPEN, 1000);
+  g_autofree AwStop *stops = random_stops(1000, 9, 10000);
+  set.n_steps = 30000;
+  g_autoptr(AwTour) patient = find(stops, 1000, &set);
+  set.speed_um_per_s = 1e7;
+  g_autoptr(AwTour) hasty = find(stops, 1000, &set);
+  g_autoptr(AwTour) again = find(stops, 1000, &set);
+  g_assert_cmpint(patient->n_steps_used, ==, 30000);
+  g_assert_cmpint(hasty->n_steps_used, <, 10000);
+  g_assert_cmpint(hasty->n_steps_used, ==, again->n_steps_used);
+  g_assert_cmpmem(hasty->order, 1000 * sizeof *hasty->order, again->order, 1000 * sizeof *again->order);
+}
+
+static void test_budget(void)
+{
+  AwTourSettings set = settings_for(OPEN, 300);
+  g_autofree AwStop *stops = random_stops(300, 10, 1000);
+  set.budget_s = 0.05;
+  g_autoptr(AwTour) tour = find(stops, 300, &set);
+  g_assert_cmpint(tour->n_steps_used, >, 0);
+}
+
 static void test_modes(void)
 {
   for (Mode mode = OPEN; mode < N_MODES; mode++)
@@ -255,6 +324,12 @@ int main(int argc, char **argv)
   g_test_init(&argc, &argv, NULL);
   g_test_add_func("/plan/tour/exhaustive", test_exhaustive);
   g_test_add_func("/plan/tour/exhaustive-nine", test_exhaustive_nine);
+  g_test_add_func("/plan/tour/exhaustive-time", test_exhaustive_time);
+  g_test_add_func("/plan/tour/exhaustive-backlash", test_exhaustive_backlash);
+  g_test_add_func("/plan/tour/exhaustive-backlash-nine", test_exhaustive_backlash_nine);
+  g_test_add_func("/plan/tour/backlash", test_backlash);
+  g_test_add_func("/plan/tour/anytime", test_anytime);
+  g_test_add_func("/plan/tour/budget", test_budget);
   g_test_add_func("/plan/tour/modes", test_modes);
   g_test_add_func("/plan/tour/same-place", test_same_place);
   g_test_add_func("/plan/tour/duplicates", test_duplicates);
