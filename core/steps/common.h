@@ -13,6 +13,8 @@
 #define AW_FACT_NUCLEUS_WIDTH_UM "segment.nucleus_width_um"
 #define AW_FACT_SENSITIVITY "segment.sensitivity"
 #define AW_FACT_SPLITTING "segment.splitting"
+#define AW_FACT_OVERVIEW_LOW "overview.low"   /* pixel value that overviews show as 0 */
+#define AW_FACT_OVERVIEW_HIGH "overview.high" /* and as 255 */
 #define AW_FACT_OVERLAP_RMS_UM "scan.overlap_rms_um"
 #define AW_FACT_N_PARTICLES "plan.n_particles"
 #define AW_FACT_TOUR_UM "tour.length_um"

@@ -17,11 +17,12 @@
 /* The scan on its way into the record; item i of every array is frame i. */
 typedef struct {
   const AwStartSettings *settings;
-  GPtrArray *rows;    /* AwScanRow */
-  GPtrArray *frames;  /* AwFrame */
-  AwRecord *record;   /* borrowed */
-  double *low, *high; /* contrast range of each frame */
-  AwImage **small;    /* shrunk planes until the common contrast is known */
+  GPtrArray *rows;     /* AwScanRow */
+  GPtrArray *frames;   /* AwFrame */
+  AwRecord *record;    /* borrowed */
+  double *low, *high;  /* contrast range of each frame */
+  AwImage **small;     /* shrunk planes until the common contrast is known */
+  double black, white; /* pixel values that the overviews show as 0 and 255 */
 } Scan;
 
 static void scan_clear(Scan *scan)
@@ -121,10 +122,11 @@ static double middle(const double *values, gsize n)
 /* One contrast for all frames, so that the map shows no patchwork. */
 static gboolean make_overviews(Scan *scan, GError **error)
 {
-  double low = middle(scan->low, scan->rows->len), high = middle(scan->high, scan->rows->len);
+  scan->black = middle(scan->low, scan->rows->len);
+  scan->white = middle(scan->high, scan->rows->len);
   for (guint i = 0; i < scan->rows->len; i++) {
     AwFrame *frame = scan->frames->pdata[i];
-    frame->overview = aw_image_overview(scan->small[i], OVERVIEW_SIDE_PX, low, high, error);
+    frame->overview = aw_image_overview(scan->small[i], OVERVIEW_SIDE_PX, scan->black, scan->white, error);
     if (!frame->overview)
       return FALSE;
   }
@@ -220,6 +222,8 @@ static gboolean store(Scan *scan, double pixel_um, const AwStepContext *context,
   if (!aw_record_begin(record, context->who, error) || !aw_record_set_frames(record, scan->frames, error) ||
       !aw_record_set_fact(record, AW_FACT_CREATED_AT, now, error) ||
       !aw_record_set_fact_double(record, AW_FACT_PIXEL_UM, pixel_um, error) ||
+      !aw_record_set_fact_double(record, AW_FACT_OVERVIEW_LOW, scan->black, error) ||
+      !aw_record_set_fact_double(record, AW_FACT_OVERVIEW_HIGH, scan->white, error) ||
       (pixel_um > 0 && !aw_record_set_pixel_map(record, &map, error)) || aw_progress_stopped(context->progress, error))
     return FALSE;
   g_autofree char *action = g_strdup_printf("started the record from %u frames", scan->frames->len);
