@@ -72,7 +72,8 @@ static gsize match_frames(const AwOverlapFrame *frames, const MarkIndex *index, 
     gsize j = 0, back = 0;
     AwPixelPoint p = a->marks[i].p;
     n_possible += is_inside(b, p.x_px - dx, p.y_px - dy, margin_px);
-    if (!nearest_mark(&index[base.b], p.x_px - dx, p.y_px - dy, tolerance_px, &j))
+    if (!is_inside(b, p.x_px - dx, p.y_px - dy, -tolerance_px) ||
+        !nearest_mark(&index[base.b], p.x_px - dx, p.y_px - dy, tolerance_px, &j))
       continue;
     AwPixelPoint q = b->marks[j].p;
     double ratio = a->marks[i].area_px / b->marks[j].area_px;
