@@ -28,6 +28,12 @@ static void object_features(const AwSegmentWork *w, const AwObject *o, double f[
   f[15] = (o->cut - o->background) / height;
 }
 
+/* Shapes and sizes beyond all that the fit has seen lose certainty the farther they lie outside. */
+static double beyond_known(const double f[AW_N_OBJECT_FEATURES])
+{
+  return 2 * MAX(f[2] - log(6), 0) + 4 * MAX(f[3] - log(3.5), 0);
+}
+
 static double logistic(double odds)
 {
   return 1 / (1 + exp(-odds));
@@ -38,7 +44,7 @@ static void judge(const AwSegmentWork *w, guint32 k)
   AwObject *o = aw_segment_object(w, k);
   double f[AW_N_OBJECT_FEATURES];
   object_features(w, o, f);
-  o->confidence = logistic(aw_object_odds(f));
+  o->confidence = logistic(aw_object_odds(f) - beyond_known(f));
 }
 
 AwSegmentInfo *aw_segment_infos(AwSegmentWork *w, GError **error)

@@ -1,6 +1,7 @@
 /* Aimwell - SPDX-License-Identifier: GPL-3.0-or-later */
 #include <math.h>
 
+#include "base/limits.h"
 #include "image/distance.h"
 #include "image/noise.h"
 #include "image/opening.h"
@@ -111,6 +112,22 @@ static AwPlane *above_ground(const AwPlane *plane, double radius_px, const AwSeg
   return clear;
 }
 
+/*
+ * Otsu's threshold of the square roots of what stands above `low`: a single glare spot or mitotic nucleus, however
+ * bright, does not draw the threshold up to itself.
+ */
+static double root_otsu(const AwPlane *plane, double low, GError **error)
+{
+  gsize n = n_px(plane);
+  g_autofree float *root = aw_try_alloc(n, sizeof *root, "an image plane", error);
+  if (!root)
+    return NAN;
+  for (gsize i = 0; i < n; i++)
+    root[i] = sqrtf(MAX(plane->value[i] - (float)low, 0));
+  double t = aw_otsu(root, n);
+  return low + t * t;
+}
+
 /* Typical height: median of the smoothed peaks that Otsu's threshold or the noise does not rule out. */
 static double typical_height(const AwPlane *clear, double radius_px, double noise, const AwSegmentRules *rules,
                              double *n_peaks, GArray *value, GArray *weight, GError **error)
@@ -118,13 +135,21 @@ static double typical_height(const AwPlane *clear, double radius_px, double nois
   g_autoptr(AwPlane) soft = aw_smooth_plane(clear, MAX(rules->height_blur * radius_px, 0.5), error);
   if (!soft)
     return NAN;
-  double least = MAX(0.5 * (double)aw_otsu(soft->value, n_px(soft)), 3 * noise);
+  double least = MAX(0.5 * root_otsu(soft, 0, error), 3 * noise);
   find_peaks(soft, least, FALSE, value, weight);
   *n_peaks = value->len;
   double middle = median_of(value, weight);
   for (guint i = 0; i < value->len; i++)
     g_array_index(weight, double, i) = MIN(g_array_index(value, double, i), middle);
   return median_of(value, weight);
+}
+
+static double low_value(const AwPlane *plane)
+{
+  float low = plane->value[0];
+  for (gsize i = 1; i < n_px(plane); i++)
+    low = MIN(low, plane->value[i]);
+  return (double)low;
 }
 
 static double first_radius(const AwPlane *smooth, GArray *value, GArray *weight, GError **error)
@@ -134,7 +159,9 @@ static double first_radius(const AwPlane *smooth, GArray *value, GArray *weight,
     g_autoptr(AwPlane) small = aw_plane_reduce(smooth, factor, error);
     if (!small)
       return NAN;
-    r = radius_above(small, aw_otsu(small->value, n_px(small)), value, weight, error);
+    double plain = radius_above(small, aw_otsu(small->value, n_px(small)), value, weight, error);
+    r = radius_above(small, root_otsu(small, low_value(small), error), value, weight, error);
+    r = plain < r || !isfinite(r) ? plain : r; /* glare misleads the one, a confluent frame the other */
     if (r >= 3)
       return MIN(factor * r, MAX_RADIUS_PX);
   }
