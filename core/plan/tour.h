@@ -12,8 +12,9 @@ typedef struct {
 } AwStop;
 
 /**
- * The cost of moving from stop `from` to stop `to`, both indices of the stops; may differ by direction (backlash).
- * Never negative. NULL asks for the straight distance, for which the search uses its fastest form.
+ * The cost of moving from stop `from` to stop `to`: pointers into the caller's stops, or its places outside the list.
+ * May differ by direction (backlash). Finite and never negative. NULL asks for the straight distance, for which the
+ * search uses its fastest form.
  */
 typedef double (*AwTourCost)(const AwStop *from, const AwStop *to, gpointer data);
 
@@ -24,7 +25,7 @@ typedef struct {
   AwTourCost cost;         /* NULL: distance */
   gboolean asymmetric;     /* cost(a, b) may differ from cost(b, a) */
   gpointer cost_data;
-  double speed_um_per_s; /* what a saved um is worth to the anytime rule; 0 uses the steps alone */
+  double speed_um_per_s; /* what a saved um is worth to the anytime rule (1 when cost is in s); 0: steps alone */
   gint64 n_steps;        /* improvement steps after the local search; -1 is the default number, 0 none */
   double budget_s;       /* > 0: search for that long instead of n_steps (not repeatable) */
   guint64 seed;
@@ -45,8 +46,13 @@ void aw_tour_free(AwTour *tour);
 G_DEFINE_AUTOPTR_CLEANUP_FUNC(AwTour, aw_tour_free)
 
 /**
- * aw_tour_find: orders n stops (n >= 1) so that the whole cost is small. Repeats exactly for a seed unless
- * budget_s > 0. Fixed ends, places and `closed` cannot be mixed: AW_ERROR_STATE.
+ * aw_tour_find: orders n stops (1 ... AW_MAX_NUCLEI) so that the whole cost is small; up to 10 stops are solved
+ * outright. Repeats exactly for a seed unless budget_s > 0. Method and sources: docs/methods-tour.md.
+ *
+ * progress: may be NULL. Free the result with aw_tour_free.
+ * AW_ERROR_EMPTY without stops; AW_ERROR_RANGE for a coordinate beyond AW_MAX_COORDINATE_UM or not a number, an index
+ * out of the list, too many stops, a cost that is no number >= 0; AW_ERROR_STATE for a closed tour with fixed ends or
+ * places, both a fixed stop and a place for one end, or one stop for both ends; AW_ERROR_MEMORY, AW_ERROR_CANCELLED.
  */
 AwTour *aw_tour_find(const AwStop *stops, gsize n, const AwTourSettings *settings, AwProgress *progress,
                      GError **error);
