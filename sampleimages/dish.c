@@ -9,7 +9,7 @@
 #define TURN_RAD 0.0419                    /* camera against stage axes: 2.4 degrees */
 #define TRUE_PIXEL_UM 0.6506               /* the label says 0.65 */
 #define FRAME_S 2.6                        /* from one exposure to the next */
-#define FIRST_EXPOSURE_UNIX_S 1935652331.0 /* 2026-05-04T09:12:11Z */
+#define FIRST_EXPOSURE_UNIX_S 1777885931.0 /* 2026-05-04T09:12:11Z */
 
 /* Where the scan stands on the stage: its middle frame. */
 static const AwScanPoint middle = { 41250.0, 28730.0 };
