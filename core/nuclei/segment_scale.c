@@ -1,5 +1,6 @@
 /* Aimwell - SPDX-License-Identifier: GPL-3.0-or-later */
 #include <math.h>
+#include <string.h>
 
 #include "base/limits.h"
 #include "image/distance.h"
@@ -12,6 +13,7 @@
 
 #define MIN_RADIUS_PX 3.0
 #define MAX_RADIUS_PX 60.0
+#define SAMPLE_SIDE_PX 512
 #define RADIUS_SHARE 0.92 /* R is meant as the half width of a nucleus' inner part */
 #define PEAK_LOSS_PX 0.75 /* what smoothing by 1 px takes from the peak of a cone, less half a pixel of the grid */
 
@@ -152,17 +154,39 @@ static double low_value(const AwPlane *plane)
   return (double)low;
 }
 
+/* The middle of a plane, at most `side` px wide and high. */
+static AwPlane *middle_of(const AwPlane *plane, int side, GError **error)
+{
+  int w = MIN(plane->width_px, side), h = MIN(plane->height_px, side);
+  AwPlane *out = aw_plane_new(w, h, error);
+  for (int y = 0; out && y < h; y++)
+    memcpy(aw_plane_row(out, y), aw_plane_row(plane, y + (plane->height_px - h) / 2) + (plane->width_px - w) / 2,
+           (gsize)w * sizeof(float));
+  return out;
+}
+
+/* Glare misleads one threshold, a confluent frame the other; either then gives far too large a radius. */
+static double rough_radius(const AwPlane *plane, GArray *value, GArray *weight, GError **error)
+{
+  double plain = radius_above(plane, aw_otsu(plane->value, n_px(plane)), value, weight, error);
+  double root = radius_above(plane, root_otsu(plane, low_value(plane), error), value, weight, error);
+  return plain < root || !isfinite(root) ? plain : root;
+}
+
+/* A first guess on the coarsest grid that still shows the nuclei; on finer grids the middle of a large image will do.
+ */
 static double first_radius(const AwPlane *smooth, GArray *value, GArray *weight, GError **error)
 {
   double r = NAN;
   for (int factor = 4; factor >= 1; factor /= 2) {
     g_autoptr(AwPlane) small = aw_plane_reduce(smooth, factor, error);
-    if (!small)
+    g_autoptr(AwPlane) part = small ? middle_of(small, factor == 4 ? G_MAXINT : SAMPLE_SIDE_PX, error) : NULL;
+    if (!part)
       return NAN;
-    double plain = radius_above(small, aw_otsu(small->value, n_px(small)), value, weight, error);
-    r = radius_above(small, root_otsu(small, low_value(small), error), value, weight, error);
-    r = plain < r || !isfinite(r) ? plain : r; /* glare misleads the one, a confluent frame the other */
-    if (r >= 3)
+    r = rough_radius(part, value, weight, error);
+    if (value->len < 8 && n_px(part) < n_px(small))
+      r = rough_radius(small, value, weight, error);
+    if (r >= 5)
       return MIN(factor * r, MAX_RADIUS_PX);
   }
   return CLAMP(r, MIN_RADIUS_PX, MAX_RADIUS_PX);
