@@ -12,6 +12,7 @@
 
 const AwSegmentRules aw_segment_rules = {
   .blur_px = 0.7,
+  .coarse_radius = 4.5,
   .ground_radii = 3,
   .height_blur = 0.4,
   .detect_height = 0.26,

@@ -208,8 +208,11 @@ static gboolean refine(AwSegmentWork *w, double radius_px, GArray *value, GArray
     if (!(s->height > 0))
       break;
     double r = RADIUS_SHARE * factor * radius_above(clear, 0.42 * s->height, value, weight, error);
+    double before = s->radius_px;
     if (!(handle > 0) && isfinite(r))
       s->radius_px = CLAMP(r, MIN_RADIUS_PX, MAX_RADIUS_PX);
+    if (fabs(s->radius_px - before) < 0.2 * before)
+      break;
   }
   return TRUE;
 }
@@ -235,7 +238,7 @@ gboolean aw_segment_measure_scale(AwSegmentWork *w, const AwImage *image, GError
 gboolean aw_segment_prepare(AwSegmentWork *w, const AwImage *image, GError **error)
 {
   (void)image;
-  w->factor = factor_for(w->scale.radius_px, 6);
+  w->factor = factor_for(w->scale.radius_px, w->rules->coarse_radius);
   w->coarse = aw_plane_reduce(w->smooth, w->factor, error);
   w->ground = w->coarse ? aw_segment_ground(w->coarse, w->scale.radius_px / w->factor, w->rules, error) : NULL;
   return w->ground != NULL;

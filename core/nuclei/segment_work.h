@@ -14,6 +14,7 @@
 /* The numbers of the method, all free of scale: lengths in R, brightness in heights, noise in its deviation. */
 typedef struct {
   double blur_px;                   /* first smoothing */
+  double coarse_radius;             /* R on the coarse grid is at least this, px */
   double ground_radii;              /* disc of the background opening */
   double height_blur;               /* smoothing before heights are read, R */
   double detect_height;             /* detection level over the typical height ... */
