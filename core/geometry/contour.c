@@ -4,6 +4,7 @@
 #include <string.h>
 
 #include "geometry/outline.h"
+#include "image/plane.h"
 
 /* The smoothed mask has whole values from 0 to FULL; the level lies between two of them, so that no pixel is on it. */
 #define FULL 256
@@ -73,7 +74,7 @@ void aw_raster_clean(AwRaster *raster)
 }
 
 /* Binomial filter [1 4 6 4 1] / 16 in both directions (standard deviation 1 px), times FULL. */
-static void smooth_mask(const AwRaster *r, guint8 *restrict rows, guint16 *restrict field)
+AW_HOT static void smooth_mask(const AwRaster *r, guint8 *restrict rows, guint16 *restrict field)
 {
   gsize w = (gsize)r->width_px, n = w * (gsize)r->height_px;
   memset(rows, 0, n);
@@ -277,18 +278,27 @@ static GArray *simplify(GArray *points)
   return kept;
 }
 
+AW_HOT static void mask_sums(const AwRaster *r, gint64 *sums)
+{
+  for (int y = 0; y < r->height_px; y++) {
+    const guint8 *row = r->mask + (gsize)y * (gsize)r->width_px;
+    int n = 0, x_sum = 0;
+    for (int x = 0; x < r->width_px; x++) {
+      n += row[x];
+      x_sum += row[x] * x;
+    }
+    sums[0] += n;
+    sums[1] += x_sum;
+    sums[2] += (gint64)n * y;
+  }
+}
+
 static double mask_moments(const AwRaster *r, AwScanPoint *centroid)
 {
-  gint64 area = 0, sum_x = 0, sum_y = 0;
-  const guint8 *m = r->mask;
-  for (int y = 0; y < r->height_px; y++)
-    for (int x = 0; x < r->width_px; x++, m++) {
-      area += *m;
-      sum_x += *m * x;
-      sum_y += *m * y;
-    }
-  *centroid = (AwScanPoint){ (double)sum_x / (double)area, (double)sum_y / (double)area };
-  return (double)area;
+  gint64 sums[3] = { 0 };
+  mask_sums(r, sums);
+  *centroid = (AwScanPoint){ (double)sums[1] / (double)sums[0], (double)sums[2] / (double)sums[0] };
+  return (double)sums[0];
 }
 
 static double points_area(GArray *points)

@@ -9,7 +9,7 @@
  * Rays stand at right angles on the outline, evenly spaced along it. Outwards they sample the ring of the local
  * background; across the line they sample the edge profile. Both are cheaper than rasters and follow any shape.
  */
-#define N_RAYS 32
+#define N_RAYS 24
 #define N_RING 5     /* samples of the ring on each ray */
 #define MIN_RING 8   /* free pixels that make a background */
 #define REACH_PX 3.5 /* the edge profile runs from -REACH_PX to REACH_PX in steps of 1 px */
