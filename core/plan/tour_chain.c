@@ -84,7 +84,7 @@ static double step(Chain *c)
   double saved = kick(c);
   if (!isfinite(saved))
     return 0;
-  saved += aw_tour_deep_run(&c->deep);
+  saved += aw_tour_deep_run(&c->deep, G_MAXUINT64);
   if (c->deep.p->asymmetric)
     saved = c->total - whole(c);
   if (saved >= 0 || saved > c->heat * log(1 - aw_random_unit(&c->random)))
@@ -144,17 +144,29 @@ static gboolean run(Chain *c, AwTourChainLimits *limits, AwProgress *progress, G
   return TRUE;
 }
 
+/* The deep search from every node, before the first kick. */
+static gboolean run_deep(Chain *c, const AwTourChainLimits *limits, AwProgress *progress, GError **error)
+{
+  for (guint32 v = 0; v < c->deep.p->n; v++)
+    aw_tour_queue_push(&c->deep.queue, v);
+  while (c->deep.queue.n && !(limits->until_us && g_get_monotonic_time() >= limits->until_us)) {
+    aw_tour_deep_run(&c->deep, 4096);
+    if (aw_progress_stopped(progress, error))
+      return FALSE;
+  }
+  while (c->deep.queue.n)
+    aw_tour_queue_pop(&c->deep.queue);
+  return TRUE;
+}
+
 gboolean aw_tour_chain(const AwTourProblem *p, AwTourArray *tour, AwTourChainLimits *limits, AwProgress *progress,
                        GError **error)
 {
   Chain c = { .deep = { .p = p, .tour = tour }, .random = aw_random_stream(limits->seed, p->n) };
   gboolean done = aw_tour_queue_init(&c.deep.queue, p->n, error);
-  for (guint32 v = 0; done && v < p->n; v++)
-    aw_tour_queue_push(&c.deep.queue, v);
   g_autofree guint32 *best = c.best = done ? aw_try_alloc(p->n, sizeof *best, "a tour", error) : NULL;
-  done = best != NULL;
+  done = best && run_deep(&c, limits, progress, error);
   if (done) {
-    aw_tour_deep_run(&c.deep);
     memcpy(best, tour->order, p->n * sizeof *best);
     tour->journal = g_array_new(FALSE, FALSE, sizeof(guint32));
     done = run(&c, limits, progress, error);

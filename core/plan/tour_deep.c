@@ -77,10 +77,10 @@ double aw_tour_deep_improve(AwTourDeep *s, guint32 v)
   return 0;
 }
 
-double aw_tour_deep_run(AwTourDeep *s)
+double aw_tour_deep_run(AwTourDeep *s, guint64 max_nodes)
 {
   double saved = 0, gain;
-  while (s->queue.n) {
+  for (; s->queue.n && max_nodes; max_nodes--) {
     guint32 v = aw_tour_queue_pop(&s->queue);
     while ((gain = aw_tour_deep_improve(s, v)) > 0)
       saved += gain;

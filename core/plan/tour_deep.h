@@ -19,8 +19,8 @@ typedef struct {
   AwTourExchange x; /* the exchange under construction */
 } AwTourDeep;
 
-/* Improves the tour from every waiting node until none waits. Returns what was saved. */
-double aw_tour_deep_run(AwTourDeep *deep);
+/* Improves the tour from at most max_nodes waiting nodes, in turn. Returns what was saved. */
+double aw_tour_deep_run(AwTourDeep *deep, guint64 max_nodes);
 
 /* Improves the tour from node v once; returns what was saved, 0 when nothing. */
 double aw_tour_deep_improve(AwTourDeep *deep, guint32 v);

@@ -6,9 +6,10 @@
  * points alone fail on lattices and at the rims of clusters, where all of them lie on one side; the two nearest of
  * each quadrant come first after the very nearest. */
 
-#define LOOKED_AT 12 /* nearest points from which the list is chosen */
+#define LOOKED_AT 12      /* nearest points from which the list is chosen */
+#define LOOKED_AT_COST 24 /* the same where another cost than distance ranks them */
 #define IN_QUADRANT 2
-#define MAX_POOL (LOOKED_AT + 4 * IN_QUADRANT)
+#define MAX_POOL (LOOKED_AT_COST + 4 * IN_QUADRANT)
 
 typedef struct {
   guint32 node;
@@ -39,11 +40,12 @@ static void put(const AwTourProblem *p, guint32 v, guint32 w, Pool *pool)
 
 static void gather(const AwTourProblem *p, guint32 v, Pool *pool)
 {
-  guint32 slots[LOOKED_AT];
-  guint n = aw_tour_tree_nearest(p->tree, v, v, LOOKED_AT, slots);
+  guint32 slots[LOOKED_AT_COST];
+  guint wanted = p->cost ? LOOKED_AT_COST : LOOKED_AT;
+  guint n = aw_tour_tree_nearest(p->tree, v, v, wanted, slots);
   for (guint i = 0; i < n; i++)
     put(p, v, slots[i], pool);
-  for (guint q = 0; q < 4 && n == LOOKED_AT; q++) {
+  for (guint q = 0; q < 4 && n == wanted; q++) {
     if (pool->n_in[q] >= IN_QUADRANT)
       continue;
     guint n_more = aw_tour_tree_nearest_in(p->tree, v, q, IN_QUADRANT, slots);

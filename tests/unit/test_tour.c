@@ -319,6 +319,25 @@ static void test_cancel(void)
   g_assert_error(error, AW_ERROR, AW_ERROR_CANCELLED);
 }
 
+static void cancel_late(const char *what, double done_frac, gpointer data)
+{
+  g_assert_cmpstr(what, ==, "tour");
+  if (done_frac > 0.4)
+    aw_progress_cancel(data);
+}
+
+/* Stopped between kicks, on the word of the report itself. */
+static void test_cancel_late(void)
+{
+  g_autofree AwStop *stops = random_stops(500, 3, 1000);
+  AwTourSettings set = settings_for(OPEN, 500);
+  AwProgress progress = { .report = cancel_late };
+  progress.data = &progress;
+  g_autoptr(GError) error = NULL;
+  g_assert_null(aw_tour_find(stops, 500, &set, &progress, &error));
+  g_assert_error(error, AW_ERROR, AW_ERROR_CANCELLED);
+}
+
 int main(int argc, char **argv)
 {
   g_test_init(&argc, &argv, NULL);
@@ -338,5 +357,6 @@ int main(int argc, char **argv)
   g_test_add_func("/plan/tour/refused", test_refused);
   g_test_add_func("/plan/tour/bad-cost", test_bad_cost);
   g_test_add_func("/plan/tour/cancel", test_cancel);
+  g_test_add_func("/plan/tour/cancel-late", test_cancel_late);
   return g_test_run();
 }
