@@ -12,8 +12,8 @@ run head -12 targets.csv
 run aimwell export small.dish -o targets.tsv --layout tsv
 grep -c . targets.tsv
 run aimwell export small.dish -o /dev/stdout | tail -3
-run aimwell status small.dish
-run aimwell status small.dish --json --verify
+run aimwell status small.dish | grep -v "^Age"
+run aimwell status small.dish --json --verify | sed "s/\"scan_age_s\": [0-9.]*/\"scan_age_s\": AGE/"
 run aimwell undo small.dish --who ben
 run aimwell undo small.dish --who ben
 run aimwell undo small.dish --redo --who ben
