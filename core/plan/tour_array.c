@@ -57,8 +57,8 @@ void aw_tour_exchange_chain(AwTourExchange *x)
 /* Sorts the cuts along the tour and translates the links from ends as the exchange numbers them. */
 static void find_cuts(const AwTourArray *a, const AwTourExchange *x, Cuts *c)
 {
-  guint32 at[AW_TOUR_MAX_CUTS];
-  guint8 edge[AW_TOUR_MAX_CUTS], turned[AW_TOUR_MAX_CUTS], end[2 * AW_TOUR_MAX_CUTS];
+  guint32 at[AW_TOUR_MAX_CUTS] = { 0 };
+  guint8 edge[AW_TOUR_MAX_CUTS] = { 0 }, turned[AW_TOUR_MAX_CUTS] = { 0 }, end[2 * AW_TOUR_MAX_CUTS] = { 0 };
   c->k = x->k;
   for (guint i = 0; i < x->k; i++) {
     guint32 p = a->pos[x->t[2 * i]], q = a->pos[x->t[2 * i + 1]];
@@ -91,14 +91,14 @@ static gboolean walk(const Cuts *c, guint base, guint8 *piece, guint8 *turned)
   for (;;) {
     guint to = c->joined[end];
     guint8 back = to % 2 == 0;
-    guint i = back ? to / 2 : (to / 2 + 1) % c->k;
+    guint i = back ? to / 2 : to / 2 + 1 == c->k ? 0 : to / 2 + 1;
     if (i == base)
       return n == c->k - 1 && !back;
     if (n == c->k - 1)
       return FALSE;
     piece[n] = (guint8)i;
     turned[n++] = back;
-    end = back ? 2 * ((i + c->k - 1) % c->k) + 1 : 2 * i;
+    end = back ? 2 * (i ? i - 1 : c->k - 1) + 1 : 2 * i;
   }
 }
 
@@ -142,6 +142,7 @@ gboolean aw_tour_array_exchange(AwTourArray *a, const AwTourExchange *x)
 {
   Cuts c;
   guint8 piece[AW_TOUR_MAX_CUTS], turned[AW_TOUR_MAX_CUTS];
+  g_return_val_if_fail(x->k >= 2 && x->k <= AW_TOUR_MAX_CUTS, FALSE);
   find_cuts(a, x, &c);
   guint base = 0;
   for (guint i = 1; i < c.k; i++)

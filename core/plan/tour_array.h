@@ -47,12 +47,12 @@ typedef struct {
 } AwTourExchange;
 
 /* The sequential exchange of Lin & Kernighan: t[1] to t[2], t[3] to t[4] ..., t[2k-1] to t[0]. */
-void aw_tour_exchange_chain(AwTourExchange *exchange);
+void aw_tour_exchange_chain(AwTourExchange *x);
 
 /**
  * Makes the exchange if it leaves one closed tour and is not refused for its length; FALSE changes nothing.
  */
-gboolean aw_tour_array_exchange(AwTourArray *array, const AwTourExchange *exchange);
+gboolean aw_tour_array_exchange(AwTourArray *a, const AwTourExchange *x);
 
 /* Takes back every exchange made since the journal was empty. */
 void aw_tour_array_undo(AwTourArray *array);

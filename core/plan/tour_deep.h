@@ -20,9 +20,9 @@ typedef struct {
 } AwTourDeep;
 
 /* Improves the tour from at most max_nodes waiting nodes, in turn. Returns what was saved. */
-double aw_tour_deep_run(AwTourDeep *deep, guint64 max_nodes);
+double aw_tour_deep_run(AwTourDeep *s, guint64 max_nodes);
 
 /* Improves the tour from node v once; returns what was saved, 0 when nothing. */
-double aw_tour_deep_improve(AwTourDeep *deep, guint32 v);
+double aw_tour_deep_improve(AwTourDeep *s, guint32 v);
 
 #endif
