@@ -8,7 +8,7 @@
 #include "base/text.h"
 #include "image/rank.h"
 #include "image/smooth.h"
-#include "nuclei/segment_work.h"
+#include "nuclei/segment_spread.h"
 
 const AwSegmentRules aw_segment_rules = {
   .blur_px = 0.7,
@@ -81,6 +81,8 @@ static void clear_work(AwSegmentWork *w)
   aw_labels_free(w->labels);
   if (w->objects)
     g_array_free(w->objects, TRUE);
+  if (w->edge)
+    g_array_free(w->edge, TRUE);
 }
 G_DEFINE_AUTO_CLEANUP_CLEAR_FUNC(AwSegmentWork, clear_work)
 
@@ -160,6 +162,7 @@ AwSegmentation *aw_segment_run(const AwImage *image, const AwSegmentSettings *se
   w.labels = aw_labels_new(image->width_px, image->height_px, error);
   if (!w.labels)
     return NULL;
+  w.edge = g_array_sized_new(FALSE, FALSE, sizeof(AwSpot), 1 << 14);
   w.objects = g_array_new(FALSE, TRUE, sizeof(AwObject));
   g_array_set_size(w.objects, 1);
   if (!stages(&w, image, progress, error))

@@ -133,10 +133,11 @@ double aw_segment_slope(const AwPlane *p, gsize at)
 
 void aw_segment_edges(const AwSegmentWork *w)
 {
+  GArray *edge = w->edge;
   AwObject *object = aw_segment_object(w, 0);
   for (guint32 k = 0; k <= w->labels->n_labels; k++)
     object[k].n_edge = object[k].n_touching = object[k].slope = object[k].slope_square = 0;
-  g_autoptr(GArray) edge = g_array_new(FALSE, FALSE, sizeof(AwSpot));
+  g_array_set_size(edge, 0);
   aw_label_edges(w->labels->label, w->width_px, w->height_px, edge);
   for (guint i = 0; i < edge->len; i++) {
     AwSpot s = g_array_index(edge, AwSpot, i);

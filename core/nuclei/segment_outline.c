@@ -72,11 +72,9 @@ static void grow_spot(AwSegmentWork *w, AwSpot s, GArray *reached)
 static void grow(AwSegmentWork *w)
 {
   int n_rounds = (int)lround(w->rules->grow_radii * w->scale.radius_px);
-  g_autoptr(GArray) reached = g_array_new(FALSE, FALSE, sizeof(AwSpot));
-  aw_label_edges(w->labels->label, w->width_px, w->height_px, reached);
-  for (guint round = 0, from = 0, to = reached->len; (int)round < n_rounds; round++, from = to, to = reached->len)
+  for (guint round = 0, from = 0, to = w->edge->len; (int)round < n_rounds; round++, from = to, to = w->edge->len)
     for (guint k = from; k < to; k++)
-      grow_spot(w, g_array_index(reached, AwSpot, k), reached);
+      grow_spot(w, g_array_index(w->edge, AwSpot, k), w->edge);
 }
 
 AW_HOT static void mask_row(const guint32 *restrict label, const float *restrict value, guint32 k, float cut,

@@ -13,7 +13,7 @@
 
 #define MIN_RADIUS_PX 3.0
 #define MAX_RADIUS_PX 60.0
-#define SAMPLE_SIDE_PX 512
+#define SAMPLE_SIDE_PX 256
 #define RADIUS_SHARE 0.92 /* R is meant as the half width of a nucleus' inner part */
 #define PEAK_LOSS_PX 0.75 /* what smoothing by 1 px takes from the peak of a cone, less half a pixel of the grid */
 
@@ -173,14 +173,14 @@ static double rough_radius(const AwPlane *plane, GArray *value, GArray *weight, 
   return plain < root || !isfinite(root) ? plain : root;
 }
 
-/* A first guess on the coarsest grid that still shows the nuclei; on finer grids the middle of a large image will do.
+/* A first guess on the coarsest grid that still shows the nuclei; the middle of a large image will do.
  */
 static double first_radius(const AwPlane *smooth, GArray *value, GArray *weight, GError **error)
 {
   double r = NAN;
   for (int factor = 4; factor >= 1; factor /= 2) {
     g_autoptr(AwPlane) small = aw_plane_reduce(smooth, factor, error);
-    g_autoptr(AwPlane) part = small ? middle_of(small, factor == 4 ? G_MAXINT : SAMPLE_SIDE_PX, error) : NULL;
+    g_autoptr(AwPlane) part = small ? middle_of(small, SAMPLE_SIDE_PX, error) : NULL;
     if (!part)
       return NAN;
     r = rough_radius(part, value, weight, error);

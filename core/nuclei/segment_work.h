@@ -91,6 +91,7 @@ struct AwSegmentWork {
   AwPlane *cut;     /* first threshold per coarse pixel, over zero, image units; huge outside every zone */
   guint8 *mask;     /* full grid, first outline */
   AwLabels *labels; /* full grid, the result */
+  GArray *edge;     /* AwSpot: edge pixels of the labels as last counted */
   GArray *objects;  /* AwObject per label; entry 0 unused */
 };
 
@@ -112,7 +113,7 @@ gboolean aw_segment_pieces(AwSegmentWork *w, GError **error);
 /* Background, plateau and outline level of every label. */
 gboolean aw_segment_levels(AwSegmentWork *w, GError **error);
 
-/* Counts the free and touching edge pixels of every label and sums the slopes of the free ones. */
+/* Lists the edge pixels, counts the free and touching ones of every label and sums the slopes of the free ones. */
 void aw_segment_edges(const AwSegmentWork *w);
 
 /* Final outlines; drops what is too small; numbers labels in scan order. Then info and confidence. */
