@@ -141,26 +141,27 @@ static void write_nodes(AwTourArray *a, guint32 begin, const guint32 *nodes, gui
 gboolean aw_tour_array_exchange(AwTourArray *a, const AwTourExchange *x)
 {
   Cuts c;
+  const guint k = x->k;
   guint8 piece[AW_TOUR_MAX_CUTS], turned[AW_TOUR_MAX_CUTS];
-  g_return_val_if_fail(x->k >= 2 && x->k <= AW_TOUR_MAX_CUTS, FALSE);
+  g_return_val_if_fail(k >= 2 && k <= AW_TOUR_MAX_CUTS, FALSE);
   find_cuts(a, x, &c);
   guint base = 0;
-  for (guint i = 1; i < c.k; i++)
+  for (guint i = 1; i < k; i++)
     if (c.pieces[i].count > c.pieces[base].count)
       base = i;
   if (!walk(&c, base, piece, turned))
     return FALSE;
-  guint lo = 0, hi = c.k - 1;
-  while (lo < hi && piece[lo] == (base + 1 + lo) % c.k && !turned[lo])
+  guint lo = 0, hi = k - 1;
+  while (lo < hi && piece[lo] == (base + 1 + lo) % k && !turned[lo])
     lo++;
-  while (hi > lo && piece[hi - 1] == (base + hi) % c.k && !turned[hi - 1])
+  while (hi > lo && piece[hi - 1] == (base + hi) % k && !turned[hi - 1])
     hi--;
   guint32 n_write = 0;
   for (guint i = lo; i < hi; i++)
     n_write += c.pieces[piece[i]].count;
   if (n_write > a->max_write)
     return FALSE;
-  guint32 begin = c.pieces[(base + 1 + lo) % c.k].begin, *out = a->scratch;
+  guint32 begin = c.pieces[(base + 1 + lo) % k].begin, *out = a->scratch;
   for (guint i = lo; i < hi; i++)
     out = copy_piece(a, &c.pieces[piece[i]], turned[i], out);
   if (a->journal)
