@@ -142,7 +142,7 @@ gboolean aw_tour_array_exchange(AwTourArray *a, const AwTourExchange *x)
 {
   Cuts c;
   const guint k = x->k;
-  guint8 piece[AW_TOUR_MAX_CUTS], turned[AW_TOUR_MAX_CUTS];
+  guint8 piece[AW_TOUR_MAX_CUTS] = { 0 }, turned[AW_TOUR_MAX_CUTS] = { 0 };
   g_return_val_if_fail(k >= 2 && k <= AW_TOUR_MAX_CUTS, FALSE);
   find_cuts(a, x, &c);
   guint base = 0;
