@@ -265,6 +265,7 @@ static gboolean fill(const Search *search, const AwMatchPattern *a, const AwMatc
   for (gsize j = 0; j < b->n; j++)
     match->of_b[j].partner = -1;
   if (search->best < 0) {
+    match->log10_chance = search->log10_tests;
     match->note = g_strdup("Not sure: no rotation and shift was found that lays the patterns on one another.");
     return TRUE;
   }

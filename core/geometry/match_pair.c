@@ -15,8 +15,8 @@
 #define N_BELIEF 40
 #define BELIEF_CHANGE 1e-7
 #define GATE_MOVEMENTS 4.5
-#define FIT_PROBABILITY 0.5
-#define PAIR_PROBABILITY 0.7
+#define PAIR_PROBABILITY 0.3
+#define PAIR_ODDS 2.3
 #define SETTLED 1e-4
 #define MIN_PAIRS 4
 #define N_AROUND 8
@@ -169,10 +169,12 @@ static void weigh_edges(Pairing *w)
   }
 }
 
-static gboolean is_pair(const Pairing *w, guint k, double least)
+/* Between two daughters of one mother a pair is uncertain, yet surer than none: odds against none decide. */
+static gboolean is_pair(const Pairing *w, guint k)
 {
   const Edge *e = &g_array_index(w->edges, Edge, k);
-  return e->p >= least && w->best_a[e->a] == k && w->best_b[e->b] == k;
+  double none = MAX(1 - MIN(w->sum_a[e->a], w->sum_b[e->b]), 0);
+  return e->p >= PAIR_PROBABILITY && e->p >= PAIR_ODDS * none && w->best_a[e->a] == k && w->best_b[e->b] == k;
 }
 
 static void fit_movement(Pairing *w)
@@ -213,7 +215,7 @@ static gboolean fit_map(Pairing *w)
 {
   g_autoptr(GArray) pairs = g_array_new(FALSE, FALSE, sizeof(AwMarkPair));
   for (guint k = 0; k < w->edges->len; k++)
-    if (is_pair(w, k, FIT_PROBABILITY)) {
+    if (is_pair(w, k)) {
       const Edge *e = &g_array_index(w->edges, Edge, k);
       const double *p = &w->a->xy_um[2 * (gsize)e->a], *q = &w->b->xy_um[2 * (gsize)e->b];
       AwMarkPair pair = { { p[0], p[1] }, { q[0], q[1] } };
@@ -260,7 +262,7 @@ static void report(const Pairing *w, AwMatch *match)
     match->of_b[j] = (AwMatchPoint){ -1, CLAMP(1 - w->sum_b[j], 0, 1) };
   match->n_matched = 0;
   for (guint k = 0; k < w->edges->len; k++)
-    if (is_pair(w, k, PAIR_PROBABILITY)) {
+    if (is_pair(w, k)) {
       const Edge *e = &g_array_index(w->edges, Edge, k);
       match->of_a[e->a] = (AwMatchPoint){ (gssize)e->b, MIN(e->p, 1) };
       match->of_b[e->b] = (AwMatchPoint){ (gssize)e->a, MIN(e->p, 1) };

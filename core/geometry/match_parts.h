@@ -83,7 +83,7 @@ typedef struct {
 typedef void (*AwSeedFound)(const AwSpotMap *map, AwSpot centre, const guint32 *about, gsize n_about, gpointer data);
 
 /* Tries seed number `seed`, a pair of probe points, on all pairs of the field. Only the seed's number decides. */
-void aw_seed_try(const AwProbe *probe, const AwField *field, guint seed, AwSeedFound found, gpointer data);
+void aw_seed_try(const AwProbe *probe, const AwField *field, guint number, AwSeedFound found, gpointer data);
 
 /* Grows a map from the points about its seed over the probe as far as the evidence rises. FALSE: chance by the seed. */
 gboolean aw_match_grow(const AwProbe *probe, const AwField *field, const guint32 *about, gsize n_about,

@@ -122,6 +122,27 @@ static void test_same(void)
   g_assert_cmpfloat(match.movement_um, <, 0.01);
 }
 
+/* One nucleus divides: a daughter is its partner, and the confidence tells that it might be the other one. */
+static void test_divided(void)
+{
+  AwRandom random = aw_random_stream(21, 0);
+  g_auto(AwTestPattern) a = aw_test_dish(&random, 200, 80, 20);
+  AwTestChange change = { 0, 0, 3, 20, 1, 0.5, 100, 200, FALSE };
+  g_auto(AwTestPattern) b = aw_test_changed(&random, &a, &change);
+  gsize j = 17, mother = (gsize)b.truth[j];
+  b.xy_um = g_renew(double, b.xy_um, 2 * (b.n + 1));
+  b.xy_um[2 * b.n] = b.xy_um[2 * j] + 5;
+  b.xy_um[2 * b.n + 1] = b.xy_um[2 * j + 1] + 1;
+  b.n++;
+  g_auto(AwMatch) match = { 0 };
+  g_assert_true(find(&a, &b, &match));
+  check_lists(&match);
+  const AwMatchPoint *of = &match.of_a[mother];
+  g_assert_true(of->partner == (gssize)j || of->partner == (gssize)b.n - 1);
+  g_assert_cmpfloat(of->confidence, <, 0.95);
+  g_assert_cmpfloat(of->confidence, >, 0.3);
+}
+
 static void test_unrelated(void)
 {
   for (guint k = 0; k < 3; k++) {
@@ -260,6 +281,7 @@ int main(int argc, char **argv)
   g_test_add_func("/geometry/match/more-than-before", test_more_than_before);
   g_test_add_func("/geometry/match/part", test_part);
   g_test_add_func("/geometry/match/same", test_same);
+  g_test_add_func("/geometry/match/divided", test_divided);
   g_test_add_func("/geometry/match/unrelated", test_unrelated);
   g_test_add_func("/geometry/match/regular", test_regular);
   g_test_add_func("/geometry/match/mirror-not-allowed", test_mirror_not_allowed);
