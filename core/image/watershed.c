@@ -6,6 +6,7 @@
 typedef struct {
   guint32 at;
   guint16 key;
+  guint16 inner; /* has all eight neighbours */
 } Pixel;
 
 typedef struct {
@@ -13,6 +14,19 @@ typedef struct {
   float *peak;
   guint32 n, capacity;
 } Regions;
+
+typedef struct {
+  const float *value;
+  guint32 *label;
+  int width, height;
+  gssize step[8]; /* to the eight neighbours */
+} Grid;
+
+static Grid grid_of(const float *value, guint32 *label, int width, int height)
+{
+  gssize w = width;
+  return (Grid){ value, label, width, height, { -w - 1, -w, -w + 1, -1, 1, w - 1, w, w + 1 } };
+}
 
 static gsize collect(const float *value, const guint8 *mask, gsize n, float *lo, float *hi)
 {
@@ -41,13 +55,16 @@ static void radix_pass(const Pixel *in, Pixel *out, gsize n, int shift)
     out[start[255 - ((in[i].key >> shift) & 255)]++] = in[i];
 }
 
-static void sort_falling(const float *value, const guint8 *mask, gsize n_all, Pixel *pixel, Pixel *spare, gsize n,
-                         float lo, float hi)
+static void sort_falling(const Grid *g, const guint8 *mask, Pixel *pixel, Pixel *spare, gsize n, float lo, float hi)
 {
   float scale = hi > lo ? 65535.f / (hi - lo) : 0.f;
-  for (gsize i = 0, k = 0; i < n_all; i++)
-    if (mask[i])
-      pixel[k++] = (Pixel){ (guint32)i, (guint16)((value[i] - lo) * scale) };
+  gsize w = (gsize)g->width, h = (gsize)g->height, k = 0;
+  for (gsize y = 0; y < h; y++)
+    for (gsize x = 0, i = y * w; x < w; x++, i++)
+      if (mask[i]) {
+        gboolean inner = x > 0 && y > 0 && x + 1 < w && y + 1 < h;
+        pixel[k++] = (Pixel){ (guint32)i, (guint16)((g->value[i] - lo) * scale), (guint16)inner };
+      }
   radix_pass(pixel, spare, n, 0);
   radix_pass(spare, pixel, n, 8);
 }
@@ -86,48 +103,41 @@ static void meet(Regions *r, guint32 a, guint32 b, float value, float height)
     r->parent[low] = a == low ? b : a;
 }
 
-typedef struct {
-  const float *value;
-  guint32 *label;
-  int width, height;
-  gssize step[8]; /* to the eight neighbours */
-} Grid;
-
-static Grid grid_of(const float *value, guint32 *label, int width, int height)
+static gboolean beyond_edge(const Grid *g, guint32 i, int k)
 {
-  gssize w = width;
-  return (Grid){ value, label, width, height, { -w - 1, -w, -w + 1, -1, 1, w - 1, w, w + 1 } };
+  int x = (int)(i % (guint32)g->width), y = (int)(i / (guint32)g->width);
+  int column = k < 3 ? k : k == 3 ? 0 : k == 4 ? 2 : k - 5, row = k < 3 ? 0 : k < 5 ? 1 : 2;
+  return x + column < 1 || x + column > g->width || y + row < 1 || y + row > g->height;
 }
 
 /* The labels around a pixel; the first is that of the highest neighbour. Returns how many there are. */
-static int labels_around(const Grid *g, guint32 i, guint32 near[8])
+static inline int labels_around(const Grid *g, Pixel p, guint32 near[8])
 {
-  int x = (int)(i % (guint32)g->width), y = (int)(i / (guint32)g->width), n = 0;
-  gboolean inner = x > 0 && y > 0 && x + 1 < g->width && y + 1 < g->height;
+  const guint32 *label = g->label + p.at;
+  const float *value = g->value + p.at;
   float top = 0;
+  int n = 0;
   for (int k = 0; k < 8; k++) {
-    int column = k < 3 ? k : k == 3 ? 0 : k == 4 ? 2 : k - 5, row = k < 3 ? 0 : k < 5 ? 1 : 2;
-    if (!inner && (x + column < 1 || x + column > g->width || y + row < 1 || y + row > g->height))
+    if (!p.inner && beyond_edge(g, p.at, k))
       continue;
-    gsize j = (gsize)((gssize)i + g->step[k]);
-    guint32 label = g->label[j];
-    if (!label)
+    gssize step = g->step[k];
+    if (!label[step])
       continue;
-    near[n] = label;
-    if (n == 0 || g->value[j] > top) {
+    near[n] = label[step];
+    if (n == 0 || value[step] > top) {
       near[n] = near[0];
-      near[0] = label;
-      top = g->value[j];
+      near[0] = label[step];
+      top = value[step];
     }
     n++;
   }
   return n;
 }
 
-static void place(const Grid *g, guint32 i, float height, Regions *r)
+static void place(const Grid *g, Pixel p, float height, Regions *r)
 {
-  guint32 near[8];
-  int n = labels_around(g, i, near);
+  guint32 near[8], i = p.at;
+  int n = labels_around(g, p, near);
   if (n == 0) {
     g->label[i] = new_region(r, g->value[i]);
     return;
@@ -149,11 +159,11 @@ guint32 aw_watershed(const float *value, const guint8 *mask, int width, int heig
     return 0;
   g_autofree Pixel *pixel = g_new(Pixel, n);
   g_autofree Pixel *spare = g_new(Pixel, n);
-  sort_falling(value, mask, n_all, pixel, spare, n, lo, hi);
   Grid grid = grid_of(value, label, width, height);
+  sort_falling(&grid, mask, pixel, spare, n, lo, hi);
   Regions r = { g_new(guint32, 64), g_new(float, 64), 0, 64 };
   for (gsize k = 0; k < n; k++)
-    place(&grid, pixel[k].at, (float)saddle_height, &r);
+    place(&grid, pixel[k], (float)saddle_height, &r);
   g_autofree guint32 *number = g_new0(guint32, r.n + 1);
   guint32 n_out = 0;
   for (guint32 i = 1; i <= r.n; i++)
@@ -176,14 +186,14 @@ guint32 aw_flood_gaps(const float *value, const guint8 *mask, int width, int hei
   gsize n = collect(value, gap, n_all, &lo, &hi), left = n;
   g_autofree Pixel *pixel = g_new(Pixel, n + 1);
   g_autofree Pixel *spare = g_new(Pixel, n + 1);
-  sort_falling(value, gap, n_all, pixel, spare, n, lo, hi);
   Grid grid = grid_of(value, label, width, height);
+  sort_falling(&grid, gap, pixel, spare, n, lo, hi);
   for (gsize before = left + 1; left > 0 && left < before;) {
     before = left;
     gsize kept = 0;
     for (gsize k = 0; k < left; k++) {
       guint32 near[8];
-      if (labels_around(&grid, pixel[k].at, near) > 0)
+      if (labels_around(&grid, pixel[k], near) > 0)
         label[pixel[k].at] = near[0];
       else
         pixel[kept++] = pixel[k];
