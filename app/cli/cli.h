@@ -17,6 +17,7 @@ typedef struct {
 
 int cli_start(int argc, char **argv);
 int cli_segment(int argc, char **argv);
+int cli_calibrate(int argc, char **argv);
 int cli_choose(int argc, char **argv);
 int cli_route(int argc, char **argv);
 int cli_export(int argc, char **argv);

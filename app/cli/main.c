@@ -13,6 +13,7 @@
 static const CliCommand commands[] = {
   { "start", "make a dish record from a scan", cli_start },
   { "segment", "find the nuclei of a dish, or of loose images", cli_segment },
+  { "calibrate", "say where the beam is, how wide, how far off it may be", cli_calibrate },
   { "choose", "propose targets by gates, accept and reject", cli_choose },
   { "route", "order the targets, or any points, to save stage travel", cli_route },
   { "export", "write the verified target list", cli_export },

@@ -12,6 +12,7 @@ static void report_json(const AwStatus *s)
   cli_json_int(json, "frames", (gint64)s->n_frames);
   cli_json_text(json, "pixel_map_origin", aw_origin_name(s->map.origin));
   cli_json_number(json, "pixel_um", aw_pixel_map_scale(&s->map));
+  cli_json_text(json, "position_origin", s->origin);
   cli_json_number(json, "scan_age_s", s->scan_age_s);
   cli_json_int(json, "nuclei", (gint64)s->n_nuclei);
   for (int state = 0; state < 4; state++)
@@ -34,6 +35,10 @@ static void report_scan(const AwStatus *s)
             aw_origin_name(s->map.origin));
   if (s->map_note)
     cli_print("         %s\n", s->map_note);
+  if (s->map_waits)
+    cli_print("         a pixel map was calibrated since; segment again to use it\n");
+  g_auto(GStrv) line = g_strsplit(s->origin, "\n", 2);
+  cli_print("Place    %s\n         %s\n", line[0], line[1]);
   if (s->scan_age_s < 0) {
     cli_print("Age      the frames are dated in the future; check the clocks\n");
   } else if (isfinite(s->scan_age_s)) {

@@ -175,18 +175,29 @@ static void draw_up(cairo_t *cr, const AwAxes *axes)
   cairo_restore(cr);
 }
 
-void aw_axes_draw(cairo_t *cr, const AwAxes *axes)
+static void draw_frame(cairo_t *cr, const AwAxes *axes, gboolean with_up)
 {
   g_return_if_fail(axes->width > 0 && axes->height > 0 && axes->u > 0);
   cairo_save(cr);
   cairo_set_dash(cr, NULL, 0, 0);
   cairo_set_line_width(cr, axes->u);
   draw_across(cr, axes);
-  draw_up(cr, axes);
+  if (with_up)
+    draw_up(cr, axes);
   aw_style_set_ink(cr, aw_ink_text);
   cairo_rectangle(cr, axes->x, axes->y, axes->width, axes->height);
   cairo_stroke(cr);
   cairo_restore(cr);
+}
+
+void aw_axes_draw(cairo_t *cr, const AwAxes *axes)
+{
+  draw_frame(cr, axes, TRUE);
+}
+
+void aw_axes_draw_across(cairo_t *cr, const AwAxes *axes)
+{
+  draw_frame(cr, axes, FALSE);
 }
 
 void aw_axes_clip(cairo_t *cr, const AwAxes *axes)

@@ -48,6 +48,9 @@ double aw_axes_y(const AwAxes *axes, double value);
 /* Draws frame, grid, ticks, numbers and labels. */
 void aw_axes_draw(cairo_t *cr, const AwAxes *axes);
 
+/* As aw_axes_draw, but the axis across only: the rows of a bar chart carry words instead. */
+void aw_axes_draw_across(cairo_t *cr, const AwAxes *axes);
+
 /* Confines drawing to the box until cairo_restore; call cairo_save before. */
 void aw_axes_clip(cairo_t *cr, const AwAxes *axes);
 

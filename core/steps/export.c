@@ -5,6 +5,7 @@
 
 #include "base/error.h"
 #include "base/text.h"
+#include "steps/calibrated.h"
 
 void aw_plan_free(AwPlan *plan)
 {
@@ -30,7 +31,7 @@ static const AwNucleus *find_nucleus(GPtrArray *nuclei, gint64 id)
 }
 
 /* One sentence per kind of number that the positions rest on. */
-static char *describe_origin(AwRecord *record, GError **error)
+static char *describe_origin(AwRecord *record, const AwCalibrated *calibrated, GError **error)
 {
   AwPixelMap map;
   GError *failure = NULL;
@@ -41,14 +42,13 @@ static char *describe_origin(AwRecord *record, GError **error)
     g_propagate_error(error, failure);
     return NULL;
   }
-  return g_strdup_printf("pixel map %s%s%s\n"
-                         "relocation assumed: one stage serves scan and beam\n"
-                         "beam offset assumed 0",
-                         aw_origin_name(map.origin), note ? ": " : "", note ? note : "");
+  g_autofree char *rest = aw_calibrated_origin(calibrated);
+  return g_strdup_printf("pixel map %s%s%s\n%s", aw_origin_name(map.origin), note ? ": " : "", note ? note : "", rest);
 }
 
-/* Until a relocation and an offset are calibrated, b = q. */
-static gboolean fill_rows(AwPlan *plan, GPtrArray *nuclei, const GArray *tour, gint64 n_particles, GError **error)
+/* b = T(q) + o; until a relocation and an offset are calibrated, b = q. */
+static gboolean fill_rows(AwPlan *plan, GPtrArray *nuclei, const GArray *tour, const AwCalibrated *calibrated,
+                          GError **error)
 {
   plan->n = tour->len;
   plan->rows = g_new0(AwTargetRow, plan->n);
@@ -62,9 +62,8 @@ static gboolean fill_rows(AwPlan *plan, GPtrArray *nuclei, const GArray *tour, g
     }
     plan->rows[i] = (AwTargetRow){ .target = (gint64)i + 1,
                                    .nucleus_id = id,
-                                   .at = { nucleus->centroid.x_um, nucleus->centroid.y_um },
+                                   .at = aw_calibrated_place(calibrated, nucleus->centroid),
                                    .scan = nucleus->centroid,
-                                   .n_particles = n_particles,
                                    .arm = "irradiate" };
   }
   return TRUE;
@@ -94,10 +93,14 @@ AwPlan *aw_step_plan(AwRecord *record, GError **error)
     return NULL;
   g_autoptr(GPtrArray) nuclei = aw_record_nuclei(record, FALSE, error);
   g_autoptr(AwPlan) plan = g_new0(AwPlan, 1);
+  g_auto(AwCalibrated) calibrated = { 0 };
   gint64 n_particles;
-  if (!nuclei || !aw_step_n_particles(record, &n_particles, error) ||
-      !fill_rows(plan, nuclei, tour, n_particles, error) || !(plan->origin = describe_origin(record, error)))
+  if (!nuclei || !aw_step_n_particles(record, &n_particles, error) || !aw_calibrated_read(record, &calibrated, error) ||
+      !fill_rows(plan, nuclei, tour, &calibrated, error) ||
+      !(plan->origin = describe_origin(record, &calibrated, error)))
     return NULL;
+  for (gsize i = 0; i < plan->n; i++)
+    plan->rows[i].n_particles = n_particles;
   plan->plan_hash = aw_plan_hash(plan->rows, plan->n);
   return g_steal_pointer(&plan);
 }

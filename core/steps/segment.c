@@ -5,6 +5,7 @@
 #include "base/text.h"
 #include "nuclei/same.h"
 #include "record/files.h"
+#include "steps/calibrated.h"
 
 void aw_segment_summary_clear(AwSegmentSummary *summary)
 {
@@ -12,24 +13,33 @@ void aw_segment_summary_clear(AwSegmentSummary *summary)
   g_clear_pointer(&summary->map_note, g_free);
 }
 
+/* An entered map wins, then one calibrated from a mark; both are checked against the overlaps, not fitted again. */
+static AwPixelMap start_map(const AwSegmentStep *step, const AwCalibrated *calibrated, double pixel_um)
+{
+  if (step->pixel_map)
+    return (AwPixelMap){ *step->pixel_map, AW_ORIGIN_ENTERED, 0 };
+  if (calibrated->has_map)
+    return (AwPixelMap){ calibrated->um_per_px, AW_ORIGIN_FITTED, 0 };
+  return (AwPixelMap){ { pixel_um, 0, 0, pixel_um }, AW_ORIGIN_ASSUMED, 0 };
+}
+
 /* The map to start from and whether it may be fitted. */
 static gboolean scan_settings(AwRecord *record, const AwSegmentStep *step, const AwStepContext *context,
                               AwScanSettings *s, GError **error)
 {
-  *s = (AwScanSettings){ .segment = { 0, step->sensitivity, step->splitting },
-                         .n_threads = context->n_threads,
-                         .fit_map = step->pixel_map == NULL };
-  if (!aw_record_fact_double(record, AW_FACT_PIXEL_UM, 0, &s->pixel_um, error))
+  *s = (AwScanSettings){ .segment = { 0, step->sensitivity, step->splitting }, .n_threads = context->n_threads };
+  g_auto(AwCalibrated) calibrated = { 0 };
+  if (!aw_calibrated_read(record, &calibrated, error) ||
+      !aw_record_fact_double(record, AW_FACT_PIXEL_UM, 0, &s->pixel_um, error))
     return FALSE;
-  if (s->pixel_um <= 0 && !step->pixel_map) {
+  if (s->pixel_um <= 0 && !step->pixel_map && !calibrated.has_map) {
     g_set_error(error, AW_ERROR, AW_ERROR_STATE,
                 "%s: no pixel size is known; start the record again with --pixel-um, or enter --pixel-map",
                 aw_record_path(record));
     return FALSE;
   }
-  AwMatrix a = { s->pixel_um, 0, 0, s->pixel_um };
-  s->map = (AwPixelMap){ step->pixel_map ? *step->pixel_map : a,
-                         step->pixel_map ? AW_ORIGIN_ENTERED : AW_ORIGIN_ASSUMED, 0 };
+  s->map = start_map(step, &calibrated, s->pixel_um);
+  s->fit_map = s->map.origin == AW_ORIGIN_ASSUMED;
   s->segment.nucleus_width_px = step->nucleus_width_um / aw_pixel_map_scale(&s->map);
   return TRUE;
 }

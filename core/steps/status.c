@@ -2,10 +2,12 @@
 #include "steps/status.h"
 
 #include <math.h>
+#include <string.h>
 
 #include "base/text.h"
 #include "plan/gates.h"
 #include "record/files.h"
+#include "steps/calibrated.h"
 #include "steps/export.h"
 
 void aw_status_free(AwStatus *status)
@@ -15,6 +17,7 @@ void aw_status_free(AwStatus *status)
   g_free(status->name);
   g_free(status->created_at);
   g_free(status->map_note);
+  g_free(status->origin);
   g_free(status->plan_hash);
   g_clear_pointer(&status->gates, g_ptr_array_unref);
   g_clear_pointer(&status->changed, g_ptr_array_unref);
@@ -34,6 +37,16 @@ static gboolean read_facts(AwRecord *record, AwStatus *s, GError **error)
   }
   return aw_record_pixel_map(record, &s->map, error) && aw_step_n_particles(record, &s->n_particles, error) &&
          aw_record_fact_double(record, AW_FACT_TOUR_UM, NAN, &s->tour_um, error);
+}
+
+static gboolean read_calibrations(AwRecord *record, AwStatus *s, GError **error)
+{
+  g_auto(AwCalibrated) c = { 0 };
+  if (!aw_calibrated_read(record, &c, error))
+    return FALSE;
+  s->origin = aw_calibrated_origin(&c);
+  s->map_waits = c.has_map && memcmp(&c.um_per_px, &s->map.um_per_px, sizeof(AwMatrix)) != 0;
+  return TRUE;
 }
 
 static gboolean count_nuclei(AwRecord *record, AwStatus *s, GError **error)
@@ -129,9 +142,9 @@ AwStatus *aw_step_status(const char *path, gboolean verify, const AwStepContext 
   if (!record || (verify && !aw_record_check(record, error)))
     return NULL;
   g_autoptr(AwStatus) s = g_new0(AwStatus, 1);
-  if (!aw_record_read_begin(record, error) || !read_facts(record, s, error) || !read_frames(record, s, error) ||
-      !count_nuclei(record, s, error) || !read_gates(record, s, error) || !read_plan(record, s, error) ||
-      !count_journal(record, s, error))
+  if (!aw_record_read_begin(record, error) || !read_facts(record, s, error) || !read_calibrations(record, s, error) ||
+      !read_frames(record, s, error) || !count_nuclei(record, s, error) || !read_gates(record, s, error) ||
+      !read_plan(record, s, error) || !count_journal(record, s, error))
     return NULL;
   aw_record_read_end(record); /* hashing takes long and reads no more of the record than the list of files */
   return check_images(record, verify, context, s, error) ? g_steal_pointer(&s) : NULL;

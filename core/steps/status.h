@@ -9,7 +9,9 @@ typedef struct {
   char *name, *created_at; /* owned */
   gsize n_frames;
   AwPixelMap map;
-  char *map_note; /* owned, may be NULL */
+  char *map_note;     /* owned, may be NULL */
+  char *origin;       /* two lines on relocation and offset; owned */
+  gboolean map_waits; /* a pixel map was calibrated that the nuclei do not rest on */
   gsize n_nuclei;
   gsize n_state[4]; /* by AwState */
   GPtrArray *gates; /* char *, owned */

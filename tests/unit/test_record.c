@@ -330,7 +330,7 @@ static void test_open_newer(Place *place, gconstpointer ignored)
   (void)ignored;
   aw_record_free(aw_test_dish_new(place->folder));
   tamper(place->path, "PRAGMA user_version = 77");
-  expect_refusal(place->path, AW_ERROR_UNSUPPORTED, "version 77, this one reads up to 1");
+  expect_refusal(place->path, AW_ERROR_UNSUPPORTED, "version 77, this one reads up to 2");
 }
 
 static void test_open_altered(Place *place, gconstpointer ignored)
