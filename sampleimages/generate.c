@@ -6,6 +6,7 @@
 #include "base/limits.h"
 #include "base/output.h"
 #include "base/pool.h"
+#include "calibration.h"
 #include "image/reader.h"
 #include "image/writer.h"
 #include "large.h"
@@ -89,6 +90,19 @@ static gboolean put_tables(const Options *o, const Drawing *drawing, GError **er
          (!outlines || put_text(o, "truth_outlines.csv", outlines, error));
 }
 
+static gboolean put_calibrations(const Options *o, GError **error)
+{
+  g_autofree char *folder = g_build_filename(o->rest[0], "calibration", NULL);
+  if (!o->check && g_mkdir_with_parents(folder, 0777) != 0)
+    return differs(folder, "could not be made", error);
+  for (int i = 0; i < SAMPLE_N_CALIBRATIONS; i++) {
+    g_autofree char *text = sample_calibration_text(i);
+    if (!put_text(o, sample_calibration_name(i), text, error))
+      return FALSE;
+  }
+  return TRUE;
+}
+
 static gboolean put_sample(const Options *o, GError **error)
 {
   const SampleChannel *channel = sample_channel(o->channel);
@@ -111,7 +125,7 @@ static gboolean put_sample(const Options *o, GError **error)
                    : aw_image_write_tiff(drawing.image[i], path, SAMPLE_NOMINAL_PIXEL_UM, error)))
       return FALSE;
   }
-  return put_tables(o, &drawing, error);
+  return put_tables(o, &drawing, error) && put_calibrations(o, error);
 }
 
 static gboolean run(const Options *o, GError **error)

@@ -47,7 +47,8 @@ static gboolean parse(int argc, char **argv, Options *o, CliCommon *common)
     { "near", 0, 0, G_OPTION_ARG_STRING, &o->near, "The mark nearest to that pixel, not the strongest", "X,Y" },
     { "term", 0, 0, G_OPTION_ARG_STRING, &o->term, "error: which term of the budget", "NAME" },
     { "um", 0, 0, G_OPTION_ARG_STRING, &o->um, "error: its rms per axis", "UM" },
-    { "at", 0, 0, G_OPTION_ARG_STRING, &o->at, "When it was measured (default: now)", "TIME" },
+    { "at", 0, 0, G_OPTION_ARG_STRING, &o->at,
+      "When it was measured, with --show the time to judge ages at (default: now)", "TIME" },
     { "show", 0, 0, G_OPTION_ARG_NONE, &o->show, "List all calibrations and the aim-error budget", NULL },
     { "json", 0, 0, G_OPTION_ARG_NONE, &o->json, "show: print as JSON", NULL },
     { "figure", 0, 0, G_OPTION_ARG_FILENAME, &o->figure, "Draw the fit, or with --show the budget; .png, .svg, .pdf",
@@ -228,7 +229,7 @@ static int do_error(const Options *o, const AwStepContext *context, GError **err
 static int do_show(const Options *o)
 {
   GError *error = NULL;
-  g_autoptr(AwCalibrationView) view = aw_step_calibrations(o->dish, &error);
+  g_autoptr(AwCalibrationView) view = aw_step_calibrations(o->dish, o->source.at_unix_s, &error);
   if (!view || (o->figure && !aw_figure_budget(&view->budget, o->figure, &error)))
     return cli_fail("calibrate", error);
   if (o->json)

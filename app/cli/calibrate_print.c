@@ -207,8 +207,9 @@ void cli_print_calibrations(const AwCalibrationView *view)
   for (guint i = 0; i < view->calibrations->len; i++) {
     const AwCalibration *c = view->calibrations->pdata[i];
     g_autofree char *at = aw_text_from_time(c->at_unix_s);
-    cli_print("  %s  %-20s %-8s %s%s\n", at, c->kind, aw_origin_name(c->origin), c->source,
-              aw_calibration_newest(view->calibrations, c->kind) == c ? "" : " (superseded)");
+    gboolean counts = aw_calibration_newest(view->calibrations, c->kind) == c;
+    cli_print("  %s  %-18s %s%s%s%s\n", at, c->kind, aw_origin_name(c->origin), c->source[0] ? " from " : "", c->source,
+              counts ? "" : " (superseded)");
   }
   cli_print("%s\n", view->origin);
   print_budget(view);

@@ -101,7 +101,9 @@ gboolean aw_figure_bead(const AwBeadFit *fit, const GArray *points, const AwBeam
   extent(points, range, &step);
   double box[4] = { left, page.top, 700 * u, page.height - page.top - aw_axes_room_below(u) - 20 * u };
   AwAxes axes = aw_page_square_axes(&page, box, range, "beam stage x / µm", "beam stage y / µm");
+  cairo_set_antialias(page.cr, CAIRO_ANTIALIAS_NONE); /* no seams between the cells */
   draw_cells(&page, &axes, points, step);
+  cairo_set_antialias(page.cr, CAIRO_ANTIALIAS_DEFAULT);
   aw_axes_draw(page.cr, &axes);
   cairo_save(page.cr);
   aw_axes_clip(page.cr, &axes);

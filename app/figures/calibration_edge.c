@@ -3,6 +3,7 @@
 
 #include "base/text.h"
 #include "figures/calibration.h"
+#include "figures/label.h"
 #include "figures/page.h"
 
 /* Wilson's interval of one standard error for k of n, Wilson 1927. */
@@ -46,7 +47,8 @@ static void draw_point(cairo_t *cr, const AwAxes *axes, double x, double y, doub
 }
 
 /* Levels of the named widths and the span between their crossings. */
-static void draw_width(cairo_t *cr, const AwAxes *axes, const AwEdgeFit *fit, double width_um, double level)
+static void draw_width(cairo_t *cr, const AwAxes *axes, const AwEdgeFit *fit, const char *name, double width_um,
+                       double level)
 {
   double height = fit->high.value - fit->low.value, y = aw_axes_y(axes, fit->low.value + level * height);
   double left = aw_axes_x(axes, fit->centre_um.value - width_um / 2);
@@ -58,6 +60,9 @@ static void draw_width(cairo_t *cr, const AwAxes *axes, const AwEdgeFit *fit, do
   cairo_stroke(cr);
   aw_style_arrow_head(cr, left, y, -1, 0, 9 * axes->u);
   aw_style_arrow_head(cr, right, y, 1, 0, 9 * axes->u);
+  AwLabel label = { .size = 16 * axes->u, .ink = aw_ink_faint, .align = level > 0.5 ? AW_ALIGN_RIGHT : AW_ALIGN_LEFT };
+  AwPatchInk patch = { { 1, 1, 1, 0.85 }, 3 * axes->u, 2 * axes->u };
+  aw_label_draw_on(cr, &label, &patch, name, level > 0.5 ? left - 12 * axes->u : right + 12 * axes->u, y - 9 * axes->u);
 }
 
 static void draw_fractions(AwPage *page, const AwAxes *axes, const AwEdgeFit *fit, const GArray *points,
@@ -67,8 +72,9 @@ static void draw_fractions(AwPage *page, const AwAxes *axes, const AwEdgeFit *fi
   aw_axes_draw(cr, axes);
   cairo_save(cr);
   aw_axes_clip(cr, axes);
-  draw_width(cr, axes, fit, fit->w1090_um.value, fit->rising ? 0.1 : 0.9);
-  draw_width(cr, axes, fit, fit->w1684_um.value, fit->rising ? 0.84 : 0.16);
+  draw_width(cr, axes, fit, "10–90 %", fit->w1090_um.value, 0.1);
+  draw_width(cr, axes, fit, "FWHM", fit->fwhm_um.value, 0.93);
+  draw_width(cr, axes, fit, "16–84 %", fit->w1684_um.value, 0.84);
   draw_curve(cr, axes, fit, TRUE);
   draw_curve(cr, axes, fit, FALSE);
   for (guint i = 0; i < points->len; i++) {

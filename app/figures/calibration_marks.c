@@ -36,10 +36,10 @@ static AwAxes axes_for(const AwPage *page, const double range[4], const char *ac
   return aw_page_square_axes(page, box, range, across, up);
 }
 
-static void draw_arrow(AwPage *page, const AwAxes *axes, const Arrow *a, double px_per_um, double sign_y)
+static void draw_arrow(AwPage *page, const AwAxes *axes, const Arrow *a, double px_per_um)
 {
   double u = page->u, x = aw_axes_x(axes, a->x), y = aw_axes_y(axes, a->y);
-  double ex = x + px_per_um * a->dx, ey = y - sign_y * px_per_um * a->dy, length = hypot(ex - x, ey - y);
+  double ex = x + px_per_um * a->dx, ey = y - px_per_um * a->dy, length = hypot(ex - x, ey - y);
   aw_style_set_ink(page->cr, aw_ink_data);
   aw_style_draw_glyph(page->cr, AW_GLYPH_DISC, x, y, 5 * u);
   cairo_fill(page->cr);
@@ -50,21 +50,21 @@ static void draw_arrow(AwPage *page, const AwAxes *axes, const Arrow *a, double 
   cairo_stroke(page->cr);
   if (length > 6 * u)
     aw_style_arrow_head(page->cr, ex, ey, ex - x, ey - y, fmin(12 * u, length));
-  AwLabel label = { .size = 18 * u, .ink = aw_ink_text };
+  gboolean leftwards = x > axes->x + 0.8 * axes->width;
+  AwLabel label = { .size = 18 * u, .ink = aw_ink_text, .align = leftwards ? AW_ALIGN_RIGHT : AW_ALIGN_LEFT };
   if (a->name)
-    aw_label_draw(page->cr, &label, a->name, x + 9 * u, y + 5 * u);
+    aw_label_draw(page->cr, &label, a->name, leftwards ? x - 9 * u : x + 9 * u, y + 5 * u);
 }
 
 /* Draws arrows so that the longest is a tenth of the box, and a key of a round length. */
-static double draw_arrows(AwPage *page, const AwAxes *axes, const Arrow *arrows, gsize n, double sign_y, double x,
-                          double y)
+static double draw_arrows(AwPage *page, const AwAxes *axes, const Arrow *arrows, gsize n, double x, double y)
 {
   double longest = 1e-9;
   for (gsize i = 0; i < n; i++)
     longest = fmax(longest, hypot(arrows[i].dx, arrows[i].dy));
   double px_per_um = 0.1 * fmin(axes->width, axes->height) / longest;
   for (gsize i = 0; i < n; i++)
-    draw_arrow(page, axes, &arrows[i], px_per_um, sign_y);
+    draw_arrow(page, axes, &arrows[i], px_per_um);
   double key = pow(10, floor(log10(longest)));
   key *= longest / key >= 5 ? 5 : longest / key >= 2 ? 2 : 1;
   aw_style_set_ink(page->cr, aw_ink_fit);
@@ -87,14 +87,15 @@ gboolean aw_figure_pixel(const AwMarkMap *map, const GArray *views, const char *
     arrows[i] = (Arrow){ v[i].p.x_px, -v[i].p.y_px, r.x_um, r.y_um, NULL };
     widen(range, arrows[i].x, arrows[i].y);
   }
-  if (!aw_page_open(&page, path, "Pixel map from one mark",
-                    "Residuals of the stage readings, enlarged, where the mark stood in the image", error))
+  if (!aw_page_open(
+          &page, path, "Pixel map from one mark",
+          "Residuals of the stage readings (x to the right, y up), enlarged, where the mark stood in the image", error))
     return FALSE;
   add_margin(range, 0.12);
   AwAxes axes = axes_for(&page, range, "column / px", "−row / px");
   double x = axes.x + axes.width + 36 * page.u, y = page.top;
   aw_axes_draw(page.cr, &axes);
-  y = draw_arrows(&page, &axes, arrows, views->len, -1, x, y) + 14 * page.u;
+  y = draw_arrows(&page, &axes, arrows, views->len, x, y) + 14 * page.u;
   g_autofree char *scale = aw_page_estimate("Scale", map->scale, map->scale_se, 5, "µm/px");
   g_autofree char *angle =
       aw_page_estimate("Rotation", map->angle_rad * 180 / G_PI, map->angle_se * 180 / G_PI, 3, "°");
@@ -133,7 +134,7 @@ gboolean aw_figure_residuals(const AwMarksFigure *f, const char *path, GError **
   AwAxes axes = axes_for(&page, range, "beam stage x / mm", "beam stage y / mm");
   double x = axes.x + axes.width + 36 * page.u, y = page.top;
   aw_axes_draw(page.cr, &axes);
-  y = draw_arrows(&page, &axes, arrows, f->pairs->len, 1, x, y) + 14 * page.u;
+  y = draw_arrows(&page, &axes, arrows, f->pairs->len, x, y) + 14 * page.u;
   g_autofree char *rms = aw_text_from_double(f->fit->rms_um, 3), *loc = aw_text_from_double(f->fit->localisation_um, 3);
   g_autofree char *lines[] = {
     g_strdup_printf("%s%s, %u marks", f->fit->mirrored ? "Mirrored " : "", aw_fit_kind_name(f->fit->kind),
@@ -189,7 +190,10 @@ static void draw_places(AwPage *page, const AwMarksFigure *f, const AwAxes *axes
     cairo_set_line_width(page->cr, 3 * page->u);
     aw_style_draw_glyph(page->cr, AW_GLYPH_CROSS, x, y, 8 * page->u);
     cairo_stroke(page->cr);
-    aw_label_draw_on(page->cr, &label, &patch, f->names->pdata[i], x + 14 * page->u, y - 10 * page->u);
+    gboolean leftwards = x > axes->x + 0.8 * axes->width;
+    label.align = leftwards ? AW_ALIGN_RIGHT : AW_ALIGN_LEFT;
+    aw_label_draw_on(page->cr, &label, &patch, f->names->pdata[i], x + (leftwards ? -14 : 14) * page->u,
+                     y - 10 * page->u);
   }
 }
 
@@ -208,7 +212,9 @@ gboolean aw_figure_target_error(const AwMarksFigure *f, const char *path, GError
   add_margin(range, 0.15);
   AwAxes axes = axes_for(&page, range, "scan x / mm", "scan y / mm");
   AwAxis scale = aw_axis_cover(0, raster(NULL, f, &axes, NULL), FALSE, "expected rms error per axis / µm");
+  cairo_set_antialias(page.cr, CAIRO_ANTIALIAS_NONE); /* no seams between the cells */
   raster(page.cr, f, &axes, &scale);
+  cairo_set_antialias(page.cr, CAIRO_ANTIALIAS_DEFAULT);
   aw_axes_draw(page.cr, &axes);
   cairo_save(page.cr);
   aw_axes_clip(page.cr, &axes);

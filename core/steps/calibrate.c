@@ -184,10 +184,10 @@ static GPtrArray *targets_of(AwRecord *record, GPtrArray *nuclei, GError **error
   return targets;
 }
 
-AwCalibrationView *aw_step_calibrations(const char *path, GError **error)
+AwCalibrationView *aw_step_calibrations(const char *path, double at_unix_s, GError **error)
 {
   AwBudgetInput input;
-  double now = (double)g_get_real_time() / G_USEC_PER_SEC;
+  double now = isnan(at_unix_s) ? (double)g_get_real_time() / G_USEC_PER_SEC : at_unix_s;
   g_autoptr(AwRecord) record = aw_record_open(path, AW_RECORD_READ, error);
   g_autoptr(AwCalibrationView) view = g_new0(AwCalibrationView, 1);
   if (!record || !aw_record_read_begin(record, error) ||

@@ -116,6 +116,7 @@ typedef struct {
 void aw_calibration_view_free(AwCalibrationView *view);
 G_DEFINE_AUTOPTR_CLEANUP_FUNC(AwCalibrationView, aw_calibration_view_free)
 
-AwCalibrationView *aw_step_calibrations(const char *path, GError **error);
+/* at_unix_s: when the targets are to be visited, which ages are counted to; NaN: now. */
+AwCalibrationView *aw_step_calibrations(const char *path, double at_unix_s, GError **error);
 
 #endif

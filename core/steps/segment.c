@@ -1,6 +1,8 @@
 /* Aimwell - SPDX-License-Identifier: GPL-3.0-or-later */
 #include "steps/segment.h"
 
+#include <string.h>
+
 #include "base/error.h"
 #include "base/text.h"
 #include "nuclei/same.h"
@@ -133,6 +135,12 @@ static AwScanResult *find_nuclei(AwRecord *record, const AwSegmentStep *step, co
   g_autoptr(GArray) list = aw_step_scan_frames(record, frames, &paths);
   g_autoptr(AwScanResult) scan =
       aw_scan_segment((const AwScanFrame *)(const void *)list->data, list->len, &settings, context->progress, error);
+  if (scan && !step->pixel_map && settings.map.origin == AW_ORIGIN_FITTED) {
+    g_autofree char *note = g_steal_pointer(&scan->map_note);
+    scan->map_note =
+        g_strdup_printf("calibrated from one mark; %s",
+                        g_str_has_prefix(note, "kept as entered; ") ? note + strlen("kept as entered; ") : note);
+  }
   if (scan && !scan->nuclei->len) {
     g_set_error(error, AW_ERROR, AW_ERROR_EMPTY, "%s: no nucleus was found in %u frames", aw_record_path(record),
                 list->len);
