@@ -15,7 +15,8 @@
 #define W1684_OVER_SIGMA 1.9889157653063543
 #define DISC_SIGMA_OVER_DIAMETER 0.25
 
-/* Parameters in the order of the vector: centre, log sigma, low, high. */
+/* Parameters in the order of the vector; the plateaus as angles (Fisher's arcsine transformation), which keeps them
+ * within 0 and 1 and lets them reach either. */
 enum { CENTRE, LOG_SIGMA, LOW, HIGH, MAX_PARAMETERS };
 
 /* A profile's share beyond the edge at u = (x - centre) / sigma, and its derivative. */
@@ -56,20 +57,30 @@ typedef struct {
   const Profile *profile;
 } Work;
 
+static double from_angle(double angle)
+{
+  return sin(angle) * sin(angle);
+}
+
+static double to_angle(double fraction)
+{
+  return asin(sqrt(CLAMP(fraction, 1e-4, 1 - 1e-4)));
+}
+
 /* The model of aw_scoring_fit. */
 static double model(const void *data, gsize i, const double *p, double *gradient)
 {
   const Work *w = data;
   double sigma = exp(p[LOG_SIGMA]), u = w->sign * (w->points[i].position_um - p[CENTRE]) / sigma;
-  double height = p[HIGH] - p[LOW], share = w->profile->share(u);
+  double low = from_angle(p[LOW]), height = from_angle(p[HIGH]) - low, share = w->profile->share(u);
   if (gradient) {
     double slope = w->profile->slope(u);
     gradient[CENTRE] = -height * slope * w->sign / sigma;
     gradient[LOG_SIGMA] = -height * slope * u;
-    gradient[LOW] = 1 - share;
-    gradient[HIGH] = share;
+    gradient[LOW] = sin(2 * p[LOW]) * (1 - share);
+    gradient[HIGH] = sin(2 * p[HIGH]) * share;
   }
-  return p[LOW] + height * share;
+  return low + height * share;
 }
 
 static int compare_points(const void *a, const void *b)
@@ -166,8 +177,8 @@ static void set_start(Work *w, AwScoring *s, gboolean fit_plateaus)
   double a = crossing(w->points, n, left, right, 0.16), b = crossing(w->points, n, left, right, 0.84);
   s->p[CENTRE] = crossing(w->points, n, left, right, 0.5);
   s->p[LOG_SIGMA] = log(fmax(fabs(b - a) / 2, range / (double)n / 4));
-  s->p[LOW] = fit_plateaus ? fmin(left, right) : 0;
-  s->p[HIGH] = fit_plateaus ? fmax(left, right) : 1;
+  s->p[LOW] = fit_plateaus ? to_angle(fmin(left, right)) : 0;
+  s->p[HIGH] = fit_plateaus ? to_angle(fmax(left, right)) : G_PI / 2;
 }
 
 static AwEstimate scaled(double value, double se, double factor)
@@ -185,15 +196,18 @@ static void fill_estimates(const AwScoring *s, AwEdgeFit *fit)
   fit->fwhm_um = scaled(sigma, sigma_se, FWHM_OVER_SIGMA);
   fit->w1090_um = scaled(sigma, sigma_se, W1090_OVER_SIGMA);
   fit->w1684_um = scaled(sigma, sigma_se, W1684_OVER_SIGMA);
-  fit->low = (AwEstimate){ s->p[LOW], levels ? sqrt(scale * s->covariance[LOW][LOW]) : 0 };
-  fit->high = (AwEstimate){ s->p[HIGH], levels ? sqrt(scale * s->covariance[HIGH][HIGH]) : 0 };
+  double low_se = levels ? fabs(sin(2 * s->p[LOW])) * sqrt(scale * s->covariance[LOW][LOW]) : 0;
+  double high_se = levels ? fabs(sin(2 * s->p[HIGH])) * sqrt(scale * s->covariance[HIGH][HIGH]) : 0;
+  fit->low = (AwEstimate){ from_angle(s->p[LOW]), low_se };
+  fit->high = (AwEstimate){ from_angle(s->p[HIGH]), high_se };
 }
 
 static gsize n_on_slope(const AwScoring *s)
 {
   gsize n = 0;
   for (gsize i = 0; i < s->n; i++) {
-    double share = (s->model(s->data, i, s->p, NULL) - s->p[LOW]) / (s->p[HIGH] - s->p[LOW]);
+    double low = from_angle(s->p[LOW]), height = from_angle(s->p[HIGH]) - low;
+    double share = (s->model(s->data, i, s->p, NULL) - low) / height;
     n += share > 0.1 && share < 0.9;
   }
   return n;

@@ -146,7 +146,7 @@ gboolean aw_mark_map_fit(const AwMarkView *views, gsize n, double pixel_um, AwMa
   const char *unit = pixel_um > 0 ? aw_unit_slip(map->scale / pixel_um) : NULL;
   if (!unit)
     return TRUE;
-  g_autofree char *found = aw_text_from_double_exact(map->scale), *known = aw_text_from_double_exact(pixel_um);
+  g_autofree char *found = aw_text_from_double(map->scale, 6), *known = aw_text_from_double_exact(pixel_um);
   g_set_error(error, AW_ERROR, AW_ERROR_RANGE,
               "the readings give %s um per pixel, but the pixel size is %s um: the um columns seem to hold %s", found,
               known, unit);

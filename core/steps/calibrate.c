@@ -178,9 +178,8 @@ static GPtrArray *targets_of(AwRecord *record, GPtrArray *nuclei, GError **error
   for (guint i = 0; i < nuclei->len; i++)
     if (states[i] == AW_STATE_ACCEPTED)
       g_ptr_array_add(targets, nuclei->pdata[i]);
-  for (guint i = 0; targets->len == 0 && i < nuclei->len; i++)
-    if (states[i] != AW_STATE_ACCEPTED)
-      g_ptr_array_add(targets, nuclei->pdata[i]);
+  if (targets->len == 0)
+    g_ptr_array_extend(targets, nuclei, NULL, NULL);
   return targets;
 }
 

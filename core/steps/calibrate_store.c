@@ -2,6 +2,7 @@
 #include "steps/calibrate_store.h"
 
 #include <math.h>
+#include <string.h>
 
 #include "base/output.h"
 #include "base/text.h"
@@ -38,7 +39,7 @@ gboolean aw_store_commit(AwRecord *record, const char *kind, const AwCalibrateSo
     return FALSE;
   AwCalibration one = { .kind = own_kind, .at_unix_s = source->at_unix_s, .source = name, .sha256 = hash };
   one.text = text->str;
-  one.origin = source->table ? AW_ORIGIN_FITTED : AW_ORIGIN_ENTERED;
+  one.origin = source->table && strcmp(kind, "beam") != 0 ? AW_ORIGIN_FITTED : AW_ORIGIN_ENTERED;
   if (isnan(one.at_unix_s))
     one.at_unix_s = (double)(g_get_real_time() / G_USEC_PER_SEC);
   return aw_record_add_calibration(record, &one, error) &&

@@ -119,6 +119,15 @@ static void summarise(const AwScanResult *scan, AwSegmentSummary *s)
   s->overlap_rms_um = scan->overlap_rms_um;
 }
 
+/* The scan takes a map that it may not fit for an entered one. */
+static void name_calibration(AwScanResult *scan)
+{
+  static const char entered[] = "kept as entered; ";
+  g_autofree char *note = g_steal_pointer(&scan->map_note);
+  const char *rest = g_str_has_prefix(note, entered) ? note + strlen(entered) : note;
+  scan->map_note = g_strdup_printf("calibrated from one mark; %s", rest);
+}
+
 /* Reads, segments and numbers; the record is still as it was. */
 static AwScanResult *find_nuclei(AwRecord *record, const AwSegmentStep *step, const AwStepContext *context,
                                  GError **error)
@@ -135,12 +144,8 @@ static AwScanResult *find_nuclei(AwRecord *record, const AwSegmentStep *step, co
   g_autoptr(GArray) list = aw_step_scan_frames(record, frames, &paths);
   g_autoptr(AwScanResult) scan =
       aw_scan_segment((const AwScanFrame *)(const void *)list->data, list->len, &settings, context->progress, error);
-  if (scan && !step->pixel_map && settings.map.origin == AW_ORIGIN_FITTED) {
-    g_autofree char *note = g_steal_pointer(&scan->map_note);
-    scan->map_note =
-        g_strdup_printf("calibrated from one mark; %s",
-                        g_str_has_prefix(note, "kept as entered; ") ? note + strlen("kept as entered; ") : note);
-  }
+  if (scan && !step->pixel_map && settings.map.origin == AW_ORIGIN_FITTED)
+    name_calibration(scan);
   if (scan && !scan->nuclei->len) {
     g_set_error(error, AW_ERROR, AW_ERROR_EMPTY, "%s: no nucleus was found in %u frames", aw_record_path(record),
                 list->len);
