@@ -21,21 +21,28 @@ run aimwell undo small.dish --who ada
 run aimwell undo small.dish --who ada
 run aimwell undo small.dish --who ada
 run aimwell status small.dish | grep -A1 Place
-echo "--- nuclei, then marks again: target errors at the nuclei, and positions that rest on it all"
+echo "--- positions before and after relocation and offset: b = T(q) + o"
 quietly aimwell segment small.dish --who ada
-run aimwell calibrate small.dish marks cal/marks.csv --fit affine --localisation-um 0.8 --at 2026-05-04T09:30:00Z --who ada --map error.png |
-  grep -A9 'Localisation' | sed 's/at the [0-9]* nuclei/at the N nuclei/'
-quietly aimwell calibrate small.dish bead cal/bead.csv --crosshair 52012,31408 --at 2026-05-04T09:40:00Z --who ada
 quietly aimwell choose small.dish --accept 1,2,3 --who ada
 quietly aimwell route small.dish --who ada
-quietly aimwell export small.dish -o targets.csv --who ada
-grep '^# origin' targets.csv | sed 's/calibrated from one mark.*/calibrated from one mark .../'
-# b = T(q) + o with the truth the tables were drawn from, within 2 um (T alone would be 300 um off, q as much)
-grep -v '^#' targets.csv | python3 -c '
-import csv, math, sys
-for r in csv.DictReader(sys.stdin):
-    qx, qy = float(r["scan_x_um"]), float(r["scan_y_um"])
-    c, s = math.cos(0.0062), math.sin(0.0062)
-    x, y = c * qx - s * qy + 312.4 + 3.42, s * qx + c * qy - 187.9 - 1.87
-    print(math.hypot(float(r["x_um"]) - x, float(r["y_um"]) - y) < 2)'
+run aimwell calibrate small.dish marks cal/marks.csv --fit affine --localisation-um 0.8 --at 2026-05-04T09:35:00Z --who ada --map error.png |
+  sed -n '/Localisation/,$s/at the [0-9]* nuclei/at the N nuclei/p'
+quietly aimwell calibrate small.dish bead cal/bead.csv --crosshair 52012,31408 --at 2026-05-04T09:40:00Z --who ada
+quietly aimwell export small.dish -o placed.csv --who ada
+grep '^# origin' placed.csv | sed 's/calibrated from one mark.*/calibrated from one mark .../'
+quietly aimwell start plain.dish --scan scan.csv --who ada
+quietly aimwell calibrate plain.dish pixel cal/pixel.csv --who ada
+quietly aimwell segment plain.dish --who ada
+quietly aimwell choose plain.dish --accept 1,2,3 --who ada
+quietly aimwell route plain.dish --who ada
+quietly aimwell export plain.dish -o plain.csv --who ada
+# the truth that the tables were drawn from, within 1 um
+python3 -c '
+import csv, math
+rows = [{r["nucleus"]: (float(r["x_um"]), float(r["y_um"])) for r in csv.DictReader(l for l in open(f) if l[0] != "#")}
+        for f in ("plain.csv", "placed.csv")]
+c, s = math.cos(0.0062), math.sin(0.0062)
+for k, (x, y) in rows[0].items():
+    b = c * x - s * y + 312.4 + 3.42, s * x + c * y - 187.9 - 1.87
+    print("nucleus", k, "where it should be:", math.dist(b, rows[1][k]) < 1)'
 ls *.png *.svg *.pdf
