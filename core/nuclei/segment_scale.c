@@ -17,6 +17,11 @@
 #define RADIUS_SHARE 0.92 /* R is meant as the half width of a nucleus' inner part */
 #define PEAK_LOSS_PX 0.75 /* what smoothing by 1 px takes from the peak of a cone, less half a pixel of the grid */
 
+/* Values of the peaks of a plane, with their weights; used again and again. */
+typedef struct {
+  GArray *value, *weight; /* double */
+} Peaks;
+
 static gsize n_px(const AwPlane *p)
 {
   return (gsize)p->width_px * (gsize)p->height_px;
@@ -65,34 +70,34 @@ static gboolean is_peak(const AwPlane *p, int x, int y)
 }
 
 /* Peaks of the plane above `least`; weight 1 or the square of the value. */
-static void find_peaks(const AwPlane *p, double least, gboolean square, GArray *value, GArray *weight)
+static void find_peaks(const AwPlane *p, double least, gboolean square, Peaks *peaks)
 {
-  g_array_set_size(value, 0);
-  g_array_set_size(weight, 0);
+  g_array_set_size(peaks->value, 0);
+  g_array_set_size(peaks->weight, 0);
   for (int y = 0; y < p->height_px; y++)
     for (int x = 0; x < p->width_px; x++) {
       double v = (double)aw_plane_row(p, y)[x];
       if (v > least && is_peak(p, x, y)) {
         double w = square ? v : 1;
-        g_array_append_val(value, v);
-        g_array_append_val(weight, w);
+        g_array_append_val(peaks->value, v);
+        g_array_append_val(peaks->weight, w);
       }
     }
 }
 
-static double median_of(const GArray *value, const GArray *weight)
+static double median_of(const Peaks *peaks)
 {
-  return aw_weighted_median((const double *)(const void *)value->data, (const double *)(const void *)weight->data,
-                            value->len);
+  return aw_weighted_median((const double *)(const void *)peaks->value->data,
+                            (const double *)(const void *)peaks->weight->data, peaks->value->len);
 }
 
 /* Radius from what stands above `level`, in pixels of the plane; NaN when nothing does. */
-static double radius_above(const AwPlane *plane, double level, GArray *value, GArray *weight, GError **error)
+static double radius_above(const AwPlane *plane, double level, Peaks *peaks, GError **error)
 {
   gsize n = n_px(plane);
   g_autoptr(AwPlane) d = aw_plane_new(plane->width_px, plane->height_px, error);
-  g_autofree guint8 *mask = g_try_malloc(2 * n);
-  if (!d || !mask)
+  g_autofree guint8 *mask = d ? aw_try_alloc(2 * n, 1, "a mask", error) : NULL;
+  if (!mask)
     return NAN;
   for (gsize i = 0; i < n; i++)
     mask[i] = (double)plane->value[i] > level;
@@ -102,8 +107,8 @@ static double radius_above(const AwPlane *plane, double level, GArray *value, GA
   g_autoptr(AwPlane) soft = aw_smooth_plane(d, 1, error);
   if (!soft)
     return NAN;
-  find_peaks(soft, 1.5, TRUE, value, weight);
-  return median_of(value, weight) + PEAK_LOSS_PX;
+  find_peaks(soft, 1.5, TRUE, peaks);
+  return median_of(peaks) + PEAK_LOSS_PX;
 }
 
 static AwPlane *above_ground(const AwPlane *plane, double radius_px, const AwSegmentRules *rules, GError **error)
@@ -132,18 +137,18 @@ static double root_otsu(const AwPlane *plane, double low, GError **error)
 
 /* Typical height: median of the smoothed peaks that Otsu's threshold or the noise does not rule out. */
 static double typical_height(const AwPlane *clear, double radius_px, double noise, const AwSegmentRules *rules,
-                             double *n_peaks, GArray *value, GArray *weight, GError **error)
+                             double *n_peaks, Peaks *peaks, GError **error)
 {
   g_autoptr(AwPlane) soft = aw_smooth_plane(clear, MAX(rules->height_blur * radius_px, 0.5), error);
   if (!soft)
     return NAN;
   double least = MAX(0.5 * root_otsu(soft, 0, error), 3 * noise);
-  find_peaks(soft, least, FALSE, value, weight);
-  *n_peaks = value->len;
-  double middle = median_of(value, weight);
-  for (guint i = 0; i < value->len; i++)
-    g_array_index(weight, double, i) = MIN(g_array_index(value, double, i), middle);
-  return median_of(value, weight);
+  find_peaks(soft, least, FALSE, peaks);
+  *n_peaks = peaks->value->len;
+  double middle = median_of(peaks);
+  for (guint i = 0; i < peaks->value->len; i++)
+    g_array_index(peaks->weight, double, i) = MIN(g_array_index(peaks->value, double, i), middle);
+  return median_of(peaks);
 }
 
 static double low_value(const AwPlane *plane)
@@ -166,16 +171,18 @@ static AwPlane *middle_of(const AwPlane *plane, int side, GError **error)
 }
 
 /* Glare misleads one threshold, a confluent frame the other; either then gives far too large a radius. */
-static double rough_radius(const AwPlane *plane, GArray *value, GArray *weight, GError **error)
+static double rough_radius(const AwPlane *plane, Peaks *peaks, GError **error)
 {
-  double plain = radius_above(plane, aw_otsu(plane->value, n_px(plane)), value, weight, error);
-  double root = radius_above(plane, root_otsu(plane, low_value(plane), error), value, weight, error);
+  double plain = radius_above(plane, aw_otsu(plane->value, n_px(plane)), peaks, error);
+  if (*error)
+    return NAN;
+  double root = radius_above(plane, root_otsu(plane, low_value(plane), error), peaks, error);
   return plain < root || !isfinite(root) ? plain : root;
 }
 
 /* A first guess on the coarsest grid that still shows the nuclei; the middle of a large image will do.
  */
-static double first_radius(const AwPlane *smooth, GArray *value, GArray *weight, GError **error)
+static double first_radius(const AwPlane *smooth, Peaks *peaks, GError **error)
 {
   double r = NAN;
   for (int factor = 4; factor >= 1; factor /= 2) {
@@ -183,16 +190,16 @@ static double first_radius(const AwPlane *smooth, GArray *value, GArray *weight,
     g_autoptr(AwPlane) part = small ? middle_of(small, SAMPLE_SIDE_PX, error) : NULL;
     if (!part)
       return NAN;
-    r = rough_radius(part, value, weight, error);
-    if (value->len < 8 && n_px(part) < n_px(small))
-      r = rough_radius(small, value, weight, error);
+    r = rough_radius(part, peaks, error);
+    if (peaks->value->len < 8 && n_px(part) < n_px(small))
+      r = rough_radius(small, peaks, error);
     if (r >= 5)
       return MIN(factor * r, MAX_RADIUS_PX);
   }
   return CLAMP(r, MIN_RADIUS_PX, MAX_RADIUS_PX);
 }
 
-static gboolean refine(AwSegmentWork *w, double radius_px, GArray *value, GArray *weight, GError **error)
+static gboolean refine(AwSegmentWork *w, double radius_px, Peaks *peaks, GError **error)
 {
   AwSegmentScale *s = &w->scale;
   double handle = w->settings->nucleus_width_px / 2;
@@ -203,11 +210,10 @@ static gboolean refine(AwSegmentWork *w, double radius_px, GArray *value, GArray
     g_autoptr(AwPlane) clear = coarse ? above_ground(coarse, s->radius_px / factor, w->rules, error) : NULL;
     if (!clear)
       return FALSE;
-    s->height =
-        typical_height(clear, s->radius_px / factor, s->noise / factor, w->rules, &s->weight, value, weight, error);
+    s->height = typical_height(clear, s->radius_px / factor, s->noise / factor, w->rules, &s->weight, peaks, error);
     if (!(s->height > 0))
       break;
-    double r = RADIUS_SHARE * factor * radius_above(clear, 0.42 * s->height, value, weight, error);
+    double r = RADIUS_SHARE * factor * radius_above(clear, 0.42 * s->height, peaks, error);
     double before = s->radius_px;
     if (!(handle > 0) && isfinite(r))
       s->radius_px = CLAMP(r, MIN_RADIUS_PX, MAX_RADIUS_PX);
@@ -223,9 +229,10 @@ gboolean aw_segment_measure_scale(AwSegmentWork *w, const AwImage *image, GError
   g_autoptr(GArray) value = g_array_new(FALSE, FALSE, sizeof(double));
   g_autoptr(GArray) weight = g_array_new(FALSE, FALSE, sizeof(double));
   GError *bad = NULL;
-  double r = first_radius(w->smooth, value, weight, &bad);
+  Peaks peaks = { value, weight };
+  double r = first_radius(w->smooth, &peaks, &bad);
   if (isfinite(r) && !bad)
-    refine(w, r, value, weight, &bad);
+    refine(w, r, &peaks, &bad);
   if (bad) {
     g_propagate_error(error, bad);
     return FALSE;
