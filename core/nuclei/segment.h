@@ -47,9 +47,10 @@ gboolean aw_segment_measure(const AwImage *image, const AwSegmentSettings *setti
 AwSegmentScale aw_segment_pool_scales(const AwSegmentScale *scales, gsize n);
 
 /**
- * aw_segment_image: finds the nuclei of one plane by local thresholds and watershed (docs/methods.md).
+ * aw_segment_image: finds the nuclei of one plane by local thresholds and watershed (docs/methods-segmentation.md).
  *
  * image: at most AW_MAX_BLOCK_SIDE_PX + margins a side; larger ones go through the blocks of core/nuclei/scan.
+ * Blocks of one frame agree best when they start at multiples of 24 px: every reduced grid then lies alike in them.
  * scale: from aw_segment_measure, or NULL to measure here.
  * An image without nuclei gives zero labels, not an error. Same input, same bytes.
  */
