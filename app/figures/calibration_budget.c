@@ -15,7 +15,9 @@ static void hatch(cairo_t *cr, double x, double y, double w, double h, double u)
   cairo_rectangle(cr, x, y, w, h);
   cairo_clip(cr);
   cairo_set_line_width(cr, 1.6 * u);
-  for (double s = -h; s < w; s += 9 * u) {
+  int n = (int)ceil((w + h) / (9 * u));
+  for (int i = 0; i < n; i++) {
+    double s = 9 * u * i - h;
     cairo_move_to(cr, x + s, y + h);
     cairo_line_to(cr, x + s + h, y);
   }
@@ -35,40 +37,48 @@ static void draw_bar(cairo_t *cr, const double box[4], AwInk ink, gboolean assum
   cairo_stroke(cr);
 }
 
-static void draw_row(AwPage *page, const AwAxes *axes, const char *name, const char *note, const double s[2], double y,
-                     AwInk ink, gboolean assumed)
+/* One row: a name, a note below it, and the rms in x and y. */
+typedef struct {
+  const char *name, *note;
+  double s[2];
+  AwInk ink;
+  gboolean assumed;
+} Row;
+
+static void draw_row(AwPage *page, const AwAxes *axes, const Row *row, double y)
 {
   double u = page->u;
   AwLabel label = { .size = 20 * u, .ink = aw_ink_text, .align = AW_ALIGN_RIGHT };
-  AwLabel small = { .size = 16 * u, .ink = assumed ? aw_ink_warn : aw_ink_faint, .align = AW_ALIGN_RIGHT };
-  aw_label_draw(page->cr, &label, name, axes->x - 16 * u, y + 4 * u);
-  aw_label_draw(page->cr, &small, note, axes->x - 16 * u, y + 29 * u);
+  AwLabel small = { .size = 16 * u, .ink = row->assumed ? aw_ink_warn : aw_ink_faint, .align = AW_ALIGN_RIGHT };
+  aw_label_draw(page->cr, &label, row->name, axes->x - 16 * u, y + 4 * u);
+  aw_label_draw(page->cr, &small, row->note, axes->x - 16 * u, y + 29 * u);
   for (int i = 0; i < 2; i++) {
-    double box[4] = { axes->x, y + (5 + 22 * i) * u, fmax(aw_axes_x(axes, s[i]) - axes->x, 1), 19 * u };
-    g_autofree char *value = aw_text_from_double(s[i], 2);
+    double box[4] = { axes->x, y + (5 + 22 * i) * u, fmax(aw_axes_x(axes, row->s[i]) - axes->x, 1), 19 * u };
+    g_autofree char *value = aw_text_from_double(row->s[i], 2);
     g_autofree char *text = g_strdup_printf("%s %s", i ? "y" : "x", value);
     AwLabel number = { .size = 16 * u, .ink = aw_ink_text };
-    draw_bar(page->cr, box, ink, assumed, u);
+    draw_bar(page->cr, box, row->ink, row->assumed, u);
     aw_label_draw(page->cr, &number, text, box[0] + box[2] + 8 * u, box[1]);
   }
 }
 
-static void draw_rows(AwPage *page, const AwAxes *axes, const AwBudget *budget, double y)
+static void draw_rows(AwPage *page, const AwAxes *axes, const AwBudget *b, double y)
 {
   for (int i = 0; i < AW_N_TERMS; i++, y += ROW * page->u) {
-    const AwBudgetTerm *t = &budget->term[i];
+    const AwBudgetTerm *t = &b->term[i];
     g_autofree char *share = aw_text_from_double(100 * t->share, 0);
     g_autofree char *note = g_strdup_printf("%s, %s %%", aw_origin_name(t->origin), share);
-    const double s[2] = { t->sx_um, t->sy_um };
-    draw_row(page, axes, aw_term_name(t->id), note, s, y,
-             aw_term_kind(t->id) == AW_TERM_DISH ? aw_ink_data : aw_ink_fit, t->origin == AW_ORIGIN_ASSUMED);
+    AwInk ink = aw_term_kind(t->id) == AW_TERM_DISH ? aw_ink_data : aw_ink_fit;
+    Row row = { aw_term_name(t->id), note, { t->sx_um, t->sy_um }, ink, t->origin == AW_ORIGIN_ASSUMED };
+    draw_row(page, axes, &row, y);
   }
-  const double dish[2] = { budget->dish_sx_um, budget->dish_sy_um };
-  const double target[2] = { budget->target_sx_um, budget->target_sy_um }, all[2] = { budget->sx_um, budget->sy_um };
-  y += 10 * page->u;
-  draw_row(page, axes, "all dish-wide", "one draw for the run", dish, y, aw_ink_data, FALSE);
-  draw_row(page, axes, "all per target", "a fresh draw each", target, y + ROW * page->u, aw_ink_fit, FALSE);
-  draw_row(page, axes, "together", "", all, y + 2 * ROW * page->u, aw_ink_text, FALSE);
+  const Row sums[] = {
+    { "all dish-wide", "one draw for the run", { b->dish_sx_um, b->dish_sy_um }, aw_ink_data, FALSE },
+    { "all per target", "a fresh draw each", { b->target_sx_um, b->target_sy_um }, aw_ink_fit, FALSE },
+    { "together", "", { b->sx_um, b->sy_um }, aw_ink_text, FALSE },
+  };
+  for (gsize i = 0; i < G_N_ELEMENTS(sums); i++)
+    draw_row(page, axes, &sums[i], y + (10 + ROW * (double)i) * page->u);
 }
 
 static char *age_text(const char *what, double age_s, const char *unknown)

@@ -256,7 +256,7 @@ gboolean aw_mark_find(const AwImage *image, const AwMarkSettings *settings, AwMa
   double least = MIN_CONTRAST * response_spread(smooth) + 1e-9;
   g_autoptr(GArray) peaks = peaks_of(smooth, settings, least);
   const Peak *rival = NULL, *chosen = peaks->len ? choose(peaks, settings, &rival) : NULL;
-  if (refuse(peaks, settings, chosen, rival, error))
+  if (refuse(peaks, settings, chosen, rival, error) || !chosen)
     return FALSE;
   measure_ground(plane, chosen->x, chosen->y, settings->diameter_px, mark);
   if (!place(plane, chosen, settings->diameter_px, mark, error))

@@ -101,24 +101,24 @@ static gboolean store_bead(AwRecord *record, const AwCalibrateSource *source, co
   return aw_store_commit(record, "bead", source, text, action, error);
 }
 
-gboolean aw_step_calibrate_bead(const char *path, const AwCalibrateSource *given, const AwBeadScan *scan,
+gboolean aw_step_calibrate_bead(const char *path, const AwCalibrateSource *source, const AwBeadScan *scan,
                                 const AwStepContext *context, AwBeadSummary *s, GError **error)
 {
-  AwCalibrateSource source = *given;
-  if (isnan(source.at_unix_s))
-    source.at_unix_s = (double)(g_get_real_time() / G_USEC_PER_SEC);
+  AwCalibrateSource timed = *source;
+  if (isnan(timed.at_unix_s))
+    timed.at_unix_s = floor((double)g_get_real_time() / G_USEC_PER_SEC);
   g_autoptr(AwRecord) record = aw_step_open(path, context, error);
-  if (!record || !(s->points = aw_table_bead(source.table, error)))
+  if (!record || !(s->points = aw_table_bead(source->table, error)))
     return FALSE;
   if (!aw_bead_fit((const AwBeadPoint *)(const void *)s->points->data, s->points->len, scan->elliptical, &s->fit,
                    error)) {
-    g_prefix_error(error, "%s: ", source.table);
+    g_prefix_error(error, "%s: ", source->table);
     return FALSE;
   }
-  if (!find_crosshair(record, &source, scan, s, error))
+  if (!find_crosshair(record, &timed, scan, s, error))
     return FALSE;
-  s->offset = aw_bead_offset(&s->fit, s->crosshair, source.at_unix_s);
-  if (!store_bead(record, &source, s, error))
+  s->offset = aw_bead_offset(&s->fit, s->crosshair, timed.at_unix_s);
+  if (!store_bead(record, &timed, s, error))
     return FALSE;
   g_auto(AwCalibrated) calibrated = { 0 };
   if (!aw_calibrated_read(record, &calibrated, error))

@@ -41,7 +41,7 @@ gboolean aw_store_commit(AwRecord *record, const char *kind, const AwCalibrateSo
   one.text = text->str;
   one.origin = source->table && strcmp(kind, "beam") != 0 ? AW_ORIGIN_FITTED : AW_ORIGIN_ENTERED;
   if (isnan(one.at_unix_s))
-    one.at_unix_s = (double)(g_get_real_time() / G_USEC_PER_SEC);
+    one.at_unix_s = floor((double)g_get_real_time() / G_USEC_PER_SEC);
   return aw_record_add_calibration(record, &one, error) &&
          (!source->before_commit || source->before_commit(source->data, error)) &&
          aw_record_commit(record, action, error);

@@ -1,6 +1,7 @@
 /* Aimwell - SPDX-License-Identifier: GPL-3.0-or-later */
 #include "steps/export.h"
 
+#include <math.h>
 #include <string.h>
 
 #include "base/error.h"
@@ -114,7 +115,7 @@ gboolean aw_step_export(const char *path, const char *out, const char *layout_na
   if (!plan)
     return FALSE;
   g_autofree char *name = aw_step_name(record);
-  g_autofree char *now = aw_text_from_time((double)(g_get_real_time() / G_USEC_PER_SEC));
+  g_autofree char *now = aw_text_from_time(floor((double)g_get_real_time() / G_USEC_PER_SEC));
   AwTargetHead head = { name, plan->plan_hash, plan->origin, now };
   if (!aw_target_list_write(layout, &head, plan->rows, plan->n, out, &summary->checked_in_memory, error))
     return FALSE;

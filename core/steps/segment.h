@@ -30,7 +30,7 @@ G_DEFINE_AUTO_CLEANUP_CLEAR_FUNC(AwSegmentSummary, aw_segment_summary_clear)
  * A nucleus that was there before (its centroid lies in the old outline and the old one's in the new, one to one)
  * keeps its number and what was decided about it. AW_ERROR_EMPTY when no nucleus is found.
  */
-gboolean aw_step_segment(const char *path, const AwSegmentStep *settings, const AwStepContext *context,
+gboolean aw_step_segment(const char *path, const AwSegmentStep *step, const AwStepContext *context,
                          AwSegmentSummary *summary, GError **error);
 
 #endif

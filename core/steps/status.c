@@ -2,7 +2,6 @@
 #include "steps/status.h"
 
 #include <math.h>
-#include <string.h>
 
 #include "base/text.h"
 #include "plan/gates.h"
@@ -39,13 +38,18 @@ static gboolean read_facts(AwRecord *record, AwStatus *s, GError **error)
          aw_record_fact_double(record, AW_FACT_TOUR_UM, NAN, &s->tour_um, error);
 }
 
+static gboolean same_matrix(AwMatrix a, AwMatrix b)
+{
+  return a.xx == b.xx && a.xy == b.xy && a.yx == b.yx && a.yy == b.yy;
+}
+
 static gboolean read_calibrations(AwRecord *record, AwStatus *s, GError **error)
 {
   g_auto(AwCalibrated) c = { 0 };
   if (!aw_calibrated_read(record, &c, error))
     return FALSE;
   s->origin = aw_calibrated_origin(&c);
-  s->map_waits = c.has_map && memcmp(&c.um_per_px, &s->map.um_per_px, sizeof(AwMatrix)) != 0;
+  s->map_waits = c.has_map && !same_matrix(c.um_per_px, s->map.um_per_px);
   return TRUE;
 }
 
