@@ -9,7 +9,8 @@
 
 /* The options as they were given, and what they mean. */
 typedef struct {
-  char *at, *fit, *localisation, *axis, *crosshair, *image, *reading, *mark_px, *near, *term, *um, *figure, *map;
+  char *at, *fit, *localisation, *axis, *crosshair, *image, *reading, *mark_px, *near, *term, *um, *figure, *map,
+      *camera;
   gboolean mirrored, plateaus, elliptical, dark, show, json;
   const char *dish;
   AwMarkSettings marks;
@@ -21,7 +22,7 @@ typedef struct {
 static void options_clear(Options *o)
 {
   char **texts[] = { &o->at,      &o->fit,  &o->localisation, &o->axis, &o->crosshair, &o->image, &o->reading,
-                     &o->mark_px, &o->near, &o->term,         &o->um,   &o->figure,    &o->map };
+                     &o->mark_px, &o->near, &o->term,         &o->um,   &o->figure,    &o->map,   &o->camera };
   for (gsize i = 0; i < G_N_ELEMENTS(texts); i++)
     g_free(*texts[i]);
 }
@@ -30,11 +31,14 @@ G_DEFINE_AUTO_CLEANUP_CLEAR_FUNC(Options, options_clear)
 static gboolean parse(int argc, char **argv, Options *o, CliCommon *common)
 {
   const GOptionEntry own[] = {
-    { "fit", 0, 0, G_OPTION_ARG_STRING, &o->fit, "marks: rigid, similarity (default) or affine", "KIND" },
+    { "fit", 0, 0, G_OPTION_ARG_STRING, &o->fit, "marks, fields: rigid, similarity (default) or affine", "KIND" },
     { "mirrored", 0, 0, G_OPTION_ARG_NONE, &o->mirrored, "marks: the stages mirror each other", NULL },
     { "localisation-um", 0, 0, G_OPTION_ARG_STRING, &o->localisation, "marks: rms error per axis of reading one mark",
       "UM" },
-    { "map", 0, 0, G_OPTION_ARG_FILENAME, &o->map, "marks: draw the expected target error over the dish", "FILE" },
+    { "map", 0, 0, G_OPTION_ARG_FILENAME, &o->map, "marks, fields: draw the expected target error over the dish",
+      "FILE" },
+    { "pixel-map", 0, 0, G_OPTION_ARG_STRING, &o->camera,
+      "fields: the map AXX,AXY,AYX,AYY of the beam stage's camera, um per px", "A" },
     { "axis", 0, 0, G_OPTION_ARG_STRING, &o->axis, "edge: x or y", "x|y" },
     { "plateaus", 0, 0, G_OPTION_ARG_NONE, &o->plateaus, "edge: fit the levels far from the edge too", NULL },
     { "elliptical", 0, 0, G_OPTION_ARG_NONE, &o->elliptical, "bead: widths in x and y of their own", NULL },
@@ -59,6 +63,7 @@ static gboolean parse(int argc, char **argv, Options *o, CliCommon *common)
                    "Turns a measurement into a fit with its errors and keeps it in the record. WORD is one of\n"
                    "  pixel TABLE  pixel map from one mark seen at several stage readings\n"
                    "  marks TABLE  relocation to the beam stage from marks read on both\n"
+                   "  fields TABLE relocation from nuclei of fields imaged again on the beam stage\n"
                    "  edge TABLE   beam's centre and width along an axis from a knife edge\n"
                    "  bead TABLE   beam's centre, hence its offset, from a bead scanned on a grid\n"
                    "  beam FILE    particle, energy and layers up to the nucleus\n"
@@ -164,6 +169,31 @@ static int do_marks(const Options *o, const AwStepContext *context, GError **err
   return CLI_OK;
 }
 
+static gboolean draw_fields(gpointer data, GError **error)
+{
+  Drawing marks = *(const Drawing *)data;
+  marks.summary = &((AwFieldsSummary *)marks.summary)->marks;
+  return draw_marks(&marks, error);
+}
+
+static int do_fields(const Options *o, const AwStepContext *context, GError **error)
+{
+  g_auto(AwFieldsSummary) s = { 0 };
+  AwFieldsSettings settings = { AW_FIT_SIMILARITY, NULL };
+  AwMatrix camera;
+  if (o->fit && !aw_fit_kind_parse(o->fit, &settings.kind, error))
+    return CLI_FAILED;
+  if (o->camera && !cli_parse_matrix("calibrate", "--pixel-map", o->camera, &camera))
+    return CLI_USAGE;
+  settings.camera = o->camera ? &camera : NULL;
+  Drawing drawing = { .o = o, .summary = &s };
+  AwCalibrateSource source = drawn_by(&drawing, draw_fields);
+  if (!aw_step_calibrate_fields(o->dish, &source, &settings, context, &s, error))
+    return CLI_FAILED;
+  cli_print_fields(&s);
+  return CLI_OK;
+}
+
 static int do_edge(const Options *o, const AwStepContext *context, GError **error)
 {
   g_auto(AwEdgeSummary) s = { 0 };
@@ -244,13 +274,13 @@ static int run_word(const char *word, const Options *o, const AwStepContext *con
   static const struct {
     const char *word;
     int (*run)(const Options *o, const AwStepContext *context, GError **error);
-  } words[] = { { "pixel", do_pixel }, { "marks", do_marks }, { "edge", do_edge },
+  } words[] = { { "pixel", do_pixel }, { "marks", do_marks }, { "fields", do_fields }, { "edge", do_edge },
                 { "bead", do_bead },   { "beam", do_beam },   { "error", do_error } };
   for (gsize i = 0; i < G_N_ELEMENTS(words); i++)
     if (strcmp(word, words[i].word) == 0)
       return words[i].run(o, context, error);
-  return cli_usage("calibrate", "there is no measurement \"%s\"; pixel, marks, edge, bead, beam and error are known",
-                   word);
+  return cli_usage("calibrate",
+                   "there is no measurement \"%s\"; pixel, marks, fields, edge, bead, beam and error are known", word);
 }
 
 int cli_calibrate(int argc, char **argv)

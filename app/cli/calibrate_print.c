@@ -62,17 +62,33 @@ static void print_suspect(const AwMarksSummary *s)
   }
 }
 
-void cli_print_marks(const AwMarksSummary *s)
+static void print_map(const AwRegistration *r, const char *from)
 {
-  const AwRegistration *r = &s->fit;
   g_autofree char *scale = cli_number(aw_registration_scale(r), 6), *rms = cli_number(r->rms_um, 3);
   g_autofree char *angle = cli_number(aw_registration_angle_rad(r) * DEGREES, 4);
-  g_autofree char *localisation = cli_number(r->localisation_um, 3), *widening = cli_number(r->widening, 2);
-  cli_print("Relocation from %" G_GSIZE_FORMAT " marks, %s%s\n", r->n, r->mirrored ? "mirrored " : "",
+  cli_print("Relocation from %" G_GSIZE_FORMAT " %s, %s%s\n", r->n, from, r->mirrored ? "mirrored " : "",
             aw_fit_kind_name(r->kind));
   cli_print("%-13s scale %s, rotation %s degrees\n", "Map", scale, angle);
   print_point("Shift", r->tx_um, r->ty_um, 2, "um");
   cli_print("%-13s %s um rms radial, %d degrees of freedom\n", "Residual", rms, r->n_free);
+}
+
+static void print_target_error(const AwMarksSummary *s)
+{
+  if (isfinite(s->min_um)) {
+    g_autofree char *min = cli_number(s->min_um, 3), *median = cli_number(s->median_um, 3);
+    g_autofree char *max = cli_number(s->max_um, 3);
+    cli_print("%-13s %s least, %s median, %s most, um rms per axis at the %u nuclei\n", "Target error", min, median,
+              max, s->places->len);
+  }
+  cli_print("Small residuals are no proof of accuracy at a target.\n");
+}
+
+void cli_print_marks(const AwMarksSummary *s)
+{
+  const AwRegistration *r = &s->fit;
+  g_autofree char *localisation = cli_number(r->localisation_um, 3), *widening = cli_number(r->widening, 2);
+  print_map(r, "marks");
   for (guint i = 0; i < s->pairs->len; i++) {
     AwBeamPoint e = aw_registration_residual(r, &g_array_index(s->pairs, AwMarkPair, i));
     g_autofree char *label = g_strdup_printf("  %s", (const char *)s->names->pdata[i]);
@@ -81,13 +97,25 @@ void cli_print_marks(const AwMarksSummary *s)
   cli_print("%-13s %s um per axis (%s); intervals widened %s times for few marks\n", "Localisation", localisation,
             aw_origin_name(r->localisation_origin), widening);
   print_suspect(s);
-  if (isfinite(s->min_um)) {
-    g_autofree char *min = cli_number(s->min_um, 3), *median = cli_number(s->median_um, 3);
-    g_autofree char *max = cli_number(s->max_um, 3);
-    cli_print("%-13s %s least, %s median, %s most, um rms per axis at the %u nuclei\n", "Target error", min, median,
-              max, s->places->len);
+  print_target_error(s);
+}
+
+void cli_print_fields(const AwFieldsSummary *s)
+{
+  const AwMatch *m = &s->match;
+  g_autofree char *moved = cli_number(m->movement_um, 2), *se = cli_number(m->movement_se_um, 2);
+  cli_print("%u nuclei in %u fields; %" G_GSIZE_FORMAT " have a partner among the scan's, %u of them surely\n",
+            s->n_nuclei, s->n_fields, m->n_matched, s->marks.pairs->len);
+  cli_print("%-13s %s\n", "Match", m->note);
+  cli_print("%-13s %s\n", "Camera", s->camera_words);
+  print_map(&s->marks.fit, "nuclei");
+  cli_print("%-13s %s +- %s um rms per axis since the scan, localisation included\n", "Movement", moved, se);
+  if (s->hours > 0) {
+    g_autofree char *hours = cli_number(s->hours, 2), *hourly = cli_number(m->movement_um / sqrt(s->hours), 2);
+    cli_print("%-13s in %s h; as a random walk, %s um after one hour (calibrate ... error --term movement)\n", "",
+              hours, hourly);
   }
-  cli_print("Small residuals are no proof of accuracy at a target.\n");
+  print_target_error(&s->marks);
 }
 
 static void print_edge_notes(const AwEdgeFit *f)

@@ -209,3 +209,20 @@ gboolean cli_parse_pair(const char *command, const char *name, const char *text,
   cli_usage(command, "%s takes two numbers X,Y in um, not \"%s\"", name, text);
   return FALSE;
 }
+
+gboolean cli_parse_matrix(const char *command, const char *name, const char *text, AwMatrix *map)
+{
+  g_auto(GStrv) part = g_strsplit(text, ",", -1);
+  double *const slot[] = { &map->xx, &map->xy, &map->yx, &map->yy };
+  if (g_strv_length(part) != 4) {
+    cli_usage(command, "%s takes four numbers AXX,AXY,AYX,AYY in um per px, not \"%s\"", name, text);
+    return FALSE;
+  }
+  for (guint i = 0; i < 4; i++)
+    if (!cli_parse_number(command, name, part[i], -1000, 1000, slot[i]))
+      return FALSE;
+  if (fabs(aw_matrix_det(*map)) > 1e-9)
+    return TRUE;
+  cli_usage(command, "%s %s cannot be inverted", name, text);
+  return FALSE;
+}

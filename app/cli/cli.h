@@ -78,6 +78,9 @@ int cli_join_ids(int argc, char **argv, const char *option);
 gboolean cli_parse_number(const char *command, const char *name, const char *text, double min, double max,
                           double *value);
 
+/* "XX,XY,YX,YY" of option `name`, um per px, into a matrix that can be inverted; FALSE after a message. */
+gboolean cli_parse_matrix(const char *command, const char *name, const char *text, AwMatrix *map);
+
 /* "X,Y" of option `name` into two numbers; FALSE after a message. */
 gboolean cli_parse_pair(const char *command, const char *name, const char *text, double *x, double *y);
 

@@ -57,24 +57,6 @@ static void report(const char *path, const AwSegmentSummary *s)
   cli_print("Next: aimwell choose %s\n", path);
 }
 
-/* "AXX,AXY,AYX,AYY" in um per px. */
-static gboolean parse_map(const char *text, AwMatrix *map)
-{
-  g_auto(GStrv) part = g_strsplit(text, ",", -1);
-  double *const slot[] = { &map->xx, &map->xy, &map->yx, &map->yy };
-  if (g_strv_length(part) != 4) {
-    cli_usage("segment", "--pixel-map takes four numbers AXX,AXY,AYX,AYY in um per px, not \"%s\"", text);
-    return FALSE;
-  }
-  for (guint i = 0; i < 4; i++)
-    if (!cli_parse_number("segment", "--pixel-map", part[i], -1000, 1000, slot[i]))
-      return FALSE;
-  if (fabs(aw_matrix_det(*map)) > 1e-9)
-    return TRUE;
-  cli_usage("segment", "--pixel-map %s cannot be inverted", text);
-  return FALSE;
-}
-
 static int segment_dish(const CliCommon *common, const Options *o)
 {
   if (o->labels || o->table || o->gated || o->pixel || o->page || o->channel != -1)
@@ -83,7 +65,8 @@ static int segment_dish(const CliCommon *common, const Options *o)
   AwMatrix map;
   if (!optional_number("--nucleus-width-um", o->width, 0.5, 1000, &step.nucleus_width_um) ||
       !optional_number("--sensitivity", o->sensitivity, -1, 1, &step.sensitivity) ||
-      !optional_number("--splitting", o->splitting, -1, 1, &step.splitting) || (o->map && !parse_map(o->map, &map)))
+      !optional_number("--splitting", o->splitting, -1, 1, &step.splitting) ||
+      (o->map && !cli_parse_matrix("segment", "--pixel-map", o->map, &map)))
     return CLI_USAGE;
   step.pixel_map = o->map ? &map : NULL;
   AwStepContext context;

@@ -80,7 +80,7 @@ static int compare_doubles(const void *a, const void *b)
   return (x > y) - (x < y);
 }
 
-static gboolean errors_at_nuclei(AwRecord *record, AwMarksSummary *s, GError **error)
+gboolean aw_marks_errors(AwRecord *record, AwMarksSummary *s, GError **error)
 {
   g_autoptr(GPtrArray) nuclei = aw_record_nuclei(record, FALSE, error);
   if (!nuclei)
@@ -103,18 +103,7 @@ static gboolean store_marks(AwRecord *record, const AwCalibrateSource *source, c
                             const AwMarksSummary *s, GError **error)
 {
   g_autoptr(GString) text = g_string_new("[marks]\n");
-  aw_store_text(text, "fit", aw_fit_kind_name(settings->kind));
-  aw_store_text(text, "mirrored", settings->mirrored ? "true" : "false");
-  aw_store_double(text, "localisation-um", settings->localisation_um);
-  aw_store_double(text, "n", (double)s->pairs->len);
-  for (guint i = 0; i < s->pairs->len; i++) {
-    const AwMarkPair *p = &g_array_index(s->pairs, AwMarkPair, i);
-    g_autofree char *key = g_strdup_printf("mark-%u", i + 1);
-    g_autofree char *x = aw_text_from_double_exact(p->scan.x_um), *y = aw_text_from_double_exact(p->scan.y_um);
-    g_autofree char *u = aw_text_from_double_exact(p->beam.bx_um), *v = aw_text_from_double_exact(p->beam.by_um);
-    g_autofree char *value = g_strdup_printf("%s %s %s %s", x, y, u, v);
-    aw_store_text(text, key, value);
-  }
+  aw_store_marks(text, settings->kind, settings->mirrored, settings->localisation_um, s->pairs);
   g_autofree char *rms = aw_text_from_double(s->fit.rms_um, 2);
   g_autofree char *action = g_strdup_printf("calibrated the relocation from %u marks: %s, residual %s um",
                                             s->pairs->len, aw_fit_kind_name(settings->kind), rms);
@@ -132,7 +121,7 @@ gboolean aw_step_calibrate_marks(const char *path, const AwCalibrateSource *sour
                            error))
     return FALSE;
   aw_registration_check(pairs, s->pairs->len, settings->kind, &s->fit, &s->check);
-  return check_marks(source->table, s, error) && errors_at_nuclei(record, s, error) &&
+  return check_marks(source->table, s, error) && aw_marks_errors(record, s, error) &&
          store_marks(record, source, settings, s, error);
 }
 

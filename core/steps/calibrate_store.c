@@ -30,6 +30,22 @@ void aw_store_matrix(GString *text, const char *prefix, AwMatrix m)
   }
 }
 
+void aw_store_marks(GString *text, AwFitKind kind, gboolean mirrored, double localisation_um, const GArray *pairs)
+{
+  aw_store_text(text, "fit", aw_fit_kind_name(kind));
+  aw_store_text(text, "mirrored", mirrored ? "true" : "false");
+  aw_store_double(text, "localisation-um", localisation_um);
+  aw_store_double(text, "n", (double)pairs->len);
+  for (guint i = 0; i < pairs->len; i++) {
+    const AwMarkPair *p = &g_array_index(pairs, AwMarkPair, i);
+    g_autofree char *key = g_strdup_printf("mark-%u", i + 1);
+    g_autofree char *x = aw_text_from_double_exact(p->scan.x_um), *y = aw_text_from_double_exact(p->scan.y_um);
+    g_autofree char *u = aw_text_from_double_exact(p->beam.bx_um), *v = aw_text_from_double_exact(p->beam.by_um);
+    g_autofree char *value = g_strdup_printf("%s %s %s %s", x, y, u, v);
+    aw_store_text(text, key, value);
+  }
+}
+
 gboolean aw_store_commit(AwRecord *record, const char *kind, const AwCalibrateSource *source, const GString *text,
                          const char *action, GError **error)
 {
