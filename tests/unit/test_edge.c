@@ -56,6 +56,14 @@ static void test_widths(void)
   NEAR(fit.w1684_um.value / 0.45, 1.988916, 1e-5);
   g_assert_true(fit.rising);
   NEAR(aw_edge_predict(&fit, 2.45, FALSE), 0.841345, 1e-6);
+  const struct {
+    double level, width;
+  } rows[] = { { 0.75, 1.348980 }, { 0.80, 1.683242 }, { 0.84, 1.988916 },
+               { 0.841345, 2.0 },  { 0.88, 2.349974 }, { 0.90, 2.563103 } };
+  for (gsize i = 0; i < G_N_ELEMENTS(rows); i++) {
+    NEAR(aw_edge_predict(&fit, 2 + 0.45 * rows[i].width / 2, FALSE), rows[i].level, 1e-6);
+    NEAR(aw_edge_predict(&fit, 2 - 0.45 * rows[i].width / 2, FALSE), 1 - rows[i].level, 1e-6);
+  }
 }
 
 static double disc_fraction(double x, double diameter)
@@ -76,7 +84,9 @@ static void test_disc(void)
   g_assert_true(aw_edge_fit(points, 61, &settings, &fit, NULL));
   NEAR(fit.disc_diameter_um, 4, 1e-4);
   g_assert_cmpuint(fit.notes & AW_EDGE_NOT_GAUSSIAN, !=, 0);
-  NEAR(2 * 4 * 0.68705 / 2 / 2.563103, 4 * 0.26805, 1e-4);
+  NEAR(aw_edge_predict(&fit, 3 + 4 * 0.68705 / 2, TRUE), 0.9, 1e-5);
+  NEAR(aw_edge_predict(&fit, 3 - 4 * 0.68705 / 2, TRUE), 0.1, 1e-5);
+  NEAR(0.68705 / 2.563103, 0.26805, 1e-5); /* sigma over D that the Gaussian formula would give; D/4 is true */
   for (int i = 0; i < 61; i++) {
     unsigned full = 0;
     for (int k = 0; k < 400; k++)

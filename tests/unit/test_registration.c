@@ -150,6 +150,31 @@ static void test_residual_ratio(void)
   }
 }
 
+/* The residuals of one registration tell nothing of its target error (Fitzpatrick, Proc. SPIE 7261, 2009). */
+static void test_uncorrelated(void)
+{
+  double n = 20000, a = 0, b = 0, aa = 0, bb = 0, ab = 0;
+  for (int run = 0; run < 20000; run++) {
+    AwRandom stream = aw_random_stream(12, (guint64)run);
+    AwMarkPair pairs[5];
+    for (int i = 0; i < 5; i++) {
+      double ex = aw_random_normal(&stream), ey = aw_random_normal(&stream);
+      pairs[i] = turned(i % 2 * 5000 + 300 * i, i / 2 * 4000, ex, ey);
+    }
+    AwRegistration r;
+    AwMarkPair truth = turned(7000, -2000, 0, 0);
+    g_assert_true(aw_registration_fit(pairs, 5, AW_FIT_RIGID, FALSE, 0, &r, NULL));
+    AwBeamPoint e = aw_registration_residual(&r, &truth);
+    double x = r.rss_um2, y = e.bx_um * e.bx_um + e.by_um * e.by_um;
+    a += x / n;
+    b += y / n;
+    aa += x * x / n;
+    bb += y * y / n;
+    ab += x * y / n;
+  }
+  NEAR((ab - a * b) / sqrt((aa - a * a) * (bb - b * b)), 0, 0.025);
+}
+
 static void test_suspects(void)
 {
   AwMarkPair pairs[6];
@@ -223,6 +248,7 @@ int main(int argc, char **argv)
   g_test_add_func("/geometry/registration/error-ratio", test_error_ratio);
   g_test_add_func("/geometry/registration/simulated-error", test_simulated_error);
   g_test_add_func("/geometry/registration/residual-ratio", test_residual_ratio);
+  g_test_add_func("/geometry/registration/uncorrelated", test_uncorrelated);
   g_test_add_func("/geometry/registration/suspects", test_suspects);
   g_test_add_func("/geometry/registration/refusals", test_refusals);
   g_test_add_func("/geometry/registration/widening", test_widening);
