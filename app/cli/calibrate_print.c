@@ -201,8 +201,9 @@ void cli_print_beam(const AwBeamAtNucleus *at)
 
 static void print_age(const char *label, double age_s, const char *unknown)
 {
-  g_autofree char *hours = cli_number(age_s / 3600, 1);
-  cli_print("%-13s %s%s\n", label, isnan(age_s) ? unknown : hours, isnan(age_s) ? "" : " h ago");
+  g_autofree char *hours = cli_number(fabs(age_s) / 3600, 1);
+  const char *when = isnan(age_s) ? "" : age_s < 0 ? " h later than the time asked for; check the clocks" : " h ago";
+  cli_print("%-13s %s%s\n", label, isnan(age_s) ? unknown : hours, when);
 }
 
 static void print_budget(const AwCalibrationView *view)

@@ -83,8 +83,9 @@ static void draw_rows(AwPage *page, const AwAxes *axes, const AwBudget *b, doubl
 
 static char *age_text(const char *what, double age_s, const char *unknown)
 {
-  g_autofree char *hours = aw_text_from_double(age_s / 3600, 1);
-  return isnan(age_s) ? g_strdup_printf("%s %s", what, unknown) : g_strdup_printf("%s %s h ago", what, hours);
+  g_autofree char *hours = aw_text_from_double(fabs(age_s) / 3600, 1);
+  return isnan(age_s) ? g_strdup_printf("%s %s", what, unknown)
+                      : g_strdup_printf("%s %s h %s", what, hours, age_s < 0 ? "later" : "ago");
 }
 
 gboolean aw_figure_budget(const AwBudget *budget, const char *path, GError **error)

@@ -99,7 +99,7 @@ static void draw_residuals(AwPage *page, AwAxes axes, const AwEdgeFit *fit, cons
 {
   double most = counts ? 3 : 1e-9;
   for (guint i = 0; i < points->len; i++)
-    most = fmax(most, fabs(residual(fit, &g_array_index(points, AwEdgePoint, i), counts)));
+    most = fmax(most, fabs(residual(fit, &g_array_index(points, AwEdgePoint, i), counts)) + (counts ? 1 : 0));
   axes.up = aw_axis_cover(-most, most, FALSE, counts ? "residual / σ" : "residual");
   aw_axes_draw(page->cr, &axes);
   aw_style_set_ink(page->cr, aw_ink_fit);

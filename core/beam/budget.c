@@ -70,8 +70,8 @@ static double growth(const AwBudgetInput *in, const AwBudgetTarget *t, AwTermId 
     double dy = in->um_per_px.yx * t->from_centre.x_px + in->um_per_px.yy * t->from_centre.y_px;
     return hypot(dx, dy) / 1000;
   }
-  double scan_s = isnan(in->scan_age_s) ? ASSUMED_SCAN_AGE_S : fmax(in->scan_age_s, 0);
-  double check_s = isnan(in->check_age_s) ? ASSUMED_CHECK_AGE_S : fmax(in->check_age_s, 0);
+  double scan_s = isnan(in->scan_age_s) ? ASSUMED_SCAN_AGE_S : fabs(in->scan_age_s);
+  double check_s = isnan(in->check_age_s) ? ASSUMED_CHECK_AGE_S : fabs(in->check_age_s);
   return id == AW_TERM_DRIFT ? sqrt(check_s / 3600) : id == AW_TERM_MOVEMENT ? sqrt(scan_s / 3600) : 1;
 }
 

@@ -54,7 +54,7 @@ typedef struct {
   const AwMatrix *offset_covariance; /* um2; NULL unknown */
   double drift_um2_per_h;            /* random walk; NaN unknown */
   double localisation_um;            /* per axis, from the scan's overlaps; NaN unknown */
-  double scan_age_s, check_age_s;    /* NaN unknown: an hour and four hours are assumed */
+  double scan_age_s, check_age_s;    /* NaN unknown: an hour and four hours are assumed; below 0: later */
 } AwBudgetInput;
 
 typedef struct {

@@ -64,10 +64,17 @@ static gboolean read_pair(AwKeyFile *file, gsize number, AwMarkPair *pair, GErro
   g_autofree char *text = aw_keyfile_need_text(file, "marks", key, error);
   g_auto(GStrv) part = g_strsplit(text ? text : "", " ", -1);
   double *to[4] = { &pair->scan.x_um, &pair->scan.y_um, &pair->beam.bx_um, &pair->beam.by_um };
-  for (int i = 0; text && i < 4; i++)
-    if (g_strv_length(part) != 4 || !aw_text_to_double(part[i], key, to[i], error))
+  if (!text)
+    return FALSE;
+  if (g_strv_length(part) != 4) {
+    g_set_error(error, AW_ERROR, AW_ERROR_FORMAT, "a stored relocation cannot be read: %s is \"%s\", not four numbers",
+                key, text);
+    return FALSE;
+  }
+  for (int i = 0; i < 4; i++)
+    if (!aw_text_to_double(part[i], key, to[i], error))
       return FALSE;
-  return text != NULL;
+  return TRUE;
 }
 
 /* The registration is fitted anew from the stored pairs, so that all it knows about its errors is at hand. */
