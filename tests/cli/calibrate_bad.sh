@@ -1,4 +1,6 @@
 # What cannot be calibrated is refused by name, and nothing is stored.
+# The tables are made with decimal points under every locale.
+awk() { LC_ALL=C command awk "$@"; }
 small_scan
 cp -r "$SAMPLES/calibration" cal
 quietly aimwell start small.dish --scan scan.csv --who ada
