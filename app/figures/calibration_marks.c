@@ -136,14 +136,14 @@ gboolean aw_figure_residuals(const AwMarksFigure *f, const char *path, GError **
   aw_axes_draw(page.cr, &axes);
   y = draw_arrows(&page, &axes, arrows, f->pairs->len, x, y) + 14 * page.u;
   g_autofree char *rms = aw_text_from_double(f->fit->rms_um, 3), *loc = aw_text_from_double(f->fit->localisation_um, 3);
-  g_autofree char *lines[] = {
-    g_strdup_printf("%s%s, %u marks", f->fit->mirrored ? "Mirrored " : "", aw_fit_kind_name(f->fit->kind),
-                    f->pairs->len),
-    g_strdup_printf("Residual  %s µm rms radial", rms),
-    g_strdup_printf("Localisation  %s µm per axis (%s)", loc, aw_origin_name(f->fit->localisation_origin)),
-  };
-  for (gsize i = 0; i < G_N_ELEMENTS(lines); i++)
-    y = aw_page_line(&page, x, y, lines[i], aw_ink_text);
+  g_autofree char *kind = g_strdup_printf("%s%s, %u marks", f->fit->mirrored ? "Mirrored " : "",
+                                          aw_fit_kind_name(f->fit->kind), f->pairs->len);
+  g_autofree char *residual = g_strdup_printf("Residual  %s µm rms radial", rms);
+  g_autofree char *localisation =
+      g_strdup_printf("Localisation  %s µm per axis (%s)", loc, aw_origin_name(f->fit->localisation_origin));
+  y = aw_page_line(&page, x, y, kind, aw_ink_text);
+  y = aw_page_line(&page, x, y, residual, aw_ink_text);
+  aw_page_line(&page, x, y, localisation, aw_ink_text);
   return aw_page_close(&page, error);
 }
 

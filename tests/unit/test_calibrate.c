@@ -195,6 +195,7 @@ static void test_damaged(Dish *dish, gconstpointer ignored)
                   aw_record_commit(record, "spoil", &error));
     g_auto(AwCalibrated) c = { 0 };
     g_assert_false(aw_calibrated_read(record, &c, &error));
+    g_test_message("%s: %s", text, error ? error->message : "no error");
     g_assert_nonnull(error);
     g_clear_error(&error);
     g_assert_true(aw_record_undo(record, "ada", NULL, &error));
