@@ -6,8 +6,8 @@
 #include "base/text.h"
 #include "figures/label.h"
 
-#define WIDTH 1200
-#define HEIGHT 900
+#define WIDTH 1200.0
+#define HEIGHT 900.0
 #define TEXT 19.0
 
 const AwInk aw_ink_data = { 0.07, 0.36, 0.65, 1 };
@@ -72,8 +72,9 @@ AwInk aw_page_shade(double value)
                                  { 0.17, 0.60, 0.58, 1 },
                                  { 0.58, 0.79, 0.36, 1 },
                                  { 0.99, 0.91, 0.47, 1 } };
-  double v = CLAMP(value, 0.0, 1.0) * (G_N_ELEMENTS(stops) - 1);
-  gsize i = (gsize)fmin(v, G_N_ELEMENTS(stops) - 2);
+  const double last = 4; /* of the stops */
+  double v = CLAMP(value, 0.0, 1.0) * last;
+  gsize i = (gsize)fmin(v, last - 1);
   double f = v - (double)i;
   const AwInk *a = &stops[i], *b = &stops[i + 1];
   return (AwInk){ a->r + f * (b->r - a->r), a->g + f * (b->g - a->g), a->b + f * (b->b - a->b), 1 };
