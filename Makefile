@@ -118,7 +118,8 @@ cli: $(BIN)/aimwell ## the command line tests alone
 	@AIMWELL=$(abspath $(BIN)/aimwell) $(TAP) tests/cli/run.py
 
 test: need-test ## install what is missing, then unit and command line tests
-	@$(MAKE) --no-print-directory all unit-and-cli
+	@$(MAKE) --no-print-directory -j$$(nproc) all
+	@$(MAKE) --no-print-directory -j$$(nproc) unit-and-cli
 
 .PHONY: unit-and-cli need-build need-test need-check
 unit-and-cli: $(unit_bin) $(BIN)/aimwell
@@ -176,7 +177,7 @@ need-check:
 
 .PHONY: demo
 demo: need-build ## install what is missing, build, and run the main job on sampleimages
-	@$(MAKE) --no-print-directory all
+	@$(MAKE) --no-print-directory -j$$(nproc) all
 	@app/cli/demo.sh $(BIN)/aimwell sampleimages $(BUILD)/demo
 
 .PHONY: clean
