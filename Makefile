@@ -11,7 +11,7 @@ PKG_FIG  := cairo pango pangocairo cairo-pdf cairo-svg
 PKG_GTK  := gtk+-3.0
 
 WARN := -Wall -Wextra -Wpedantic -Wshadow -Wstrict-prototypes -Wmissing-prototypes -Wvla -Wpointer-arith \
-        -Wwrite-strings -Wcast-qual -Wundef -Wformat=2 -Wno-format-nonliteral
+        -Wwrite-strings -Wcast-qual -Wundef -Wformat=2 -Werror=implicit-function-declaration -Wno-format-nonliteral
 OPT_release := -O2 -g
 OPT_asan    := -O1 -g -fno-omit-frame-pointer -fsanitize=address,undefined -fno-sanitize-recover=undefined
 OPT_tsan    := -O1 -g -fno-omit-frame-pointer -fsanitize=thread

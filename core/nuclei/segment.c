@@ -1,4 +1,5 @@
 /* Aimwell - SPDX-License-Identifier: GPL-3.0-or-later */
+#include "nuclei/segment_margin.h"
 #include "nuclei/segment.h"
 
 #include <math.h>
@@ -178,5 +179,13 @@ AwSegmentation *aw_segment_run(const AwImage *image, const AwSegmentSettings *se
 AwSegmentation *aw_segment_image(const AwImage *image, const AwSegmentSettings *settings, const AwSegmentScale *scale,
                                  AwProgress *progress, GError **error)
 {
-  return aw_segment_run(image, settings, scale, &aw_segment_rules, NULL, progress, error);
+  AwSegmentScale own;
+  if (!scale && !aw_segment_measure(image, settings, &own, error))
+    return NULL;
+  g_autoptr(AwImage) mirrored = aw_segment_mirror(image, error);
+  if (!mirrored)
+    return NULL;
+  g_autoptr(AwSegmentation) wide =
+      aw_segment_run(mirrored, settings, scale ? scale : &own, &aw_segment_rules, NULL, progress, error);
+  return wide ? aw_segment_cut_back(wide, error) : NULL;
 }
