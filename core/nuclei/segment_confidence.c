@@ -51,6 +51,8 @@ AwSegmentInfo *aw_segment_infos(AwSegmentWork *w, GError **error)
 {
   guint32 n = w->labels->n_labels;
   double disc = G_PI * w->scale.radius_px * w->scale.radius_px;
+  /* Who asks for more splitting wants the pieces, doubtful or not. */
+  double doubtful = w->rules->debris_confidence * (1 - MAX(w->settings->splitting, 0));
   g_autofree guint8 *drop = g_new0(guint8, (gsize)n + 1);
   aw_segment_edges(w);
   for (guint32 k = 1; k <= n; k++) {
@@ -59,8 +61,7 @@ AwSegmentInfo *aw_segment_infos(AwSegmentWork *w, GError **error)
     if (drop[k])
       continue;
     judge(w, k);
-    drop[k] = !(w->probe && w->probe->object) && o->confidence < w->rules->debris_confidence &&
-              o->n_px < w->rules->debris_area * disc;
+    drop[k] = !(w->probe && w->probe->object) && o->confidence < doubtful && o->n_px < w->rules->debris_area * disc;
   }
   aw_segment_renumber(w, drop);
   n = w->labels->n_labels;
