@@ -36,8 +36,8 @@ const AwSegmentRules aw_segment_rules = {
   .ring_to = 0.6,
   .ring_quantile = 0.5,
   .smallest_area = 0.06,
-  .debris_confidence = 0.55,
-  .debris_area = 0.9,
+  .debris_confidence = 0.5,
+  .debris_area = 0.8,
 };
 
 void aw_segmentation_free(AwSegmentation *s)
