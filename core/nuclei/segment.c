@@ -1,5 +1,4 @@
 /* Aimwell - SPDX-License-Identifier: GPL-3.0-or-later */
-#include "nuclei/segment_margin.h"
 #include "nuclei/segment.h"
 
 #include <math.h>
@@ -9,6 +8,7 @@
 #include "base/text.h"
 #include "image/rank.h"
 #include "image/smooth.h"
+#include "nuclei/segment_margin.h"
 #include "nuclei/segment_spread.h"
 
 const AwSegmentRules aw_segment_rules = {
