@@ -21,8 +21,10 @@ double aw_random_normal(AwRandom *r)
 unsigned aw_random_poisson(AwRandom *r, double mean)
 {
   unsigned total = 0;
-  for (; mean > 30.0; mean -= 30.0)
+  while (mean > 30.0) {
     total += aw_random_poisson(r, 30.0);
+    mean -= 30.0;
+  }
   double floor_p = exp(-mean);
   double product = aw_random_unit(r);
   while (product > floor_p) {

@@ -84,7 +84,7 @@ void aw_plane_expand_row(const AwPlane *reduced, int factor, int y, int x0, int 
     return;
   }
   int first = MAX(x0 / factor - 1, 0), last = MIN((x0 + width) / factor + 2, n);
-  float local[256], *blend = last - first <= 256 ? local : g_new(float, (gsize)(last - first));
+  float local[256] = { 0 }, *blend = last - first <= 256 ? local : g_new0(float, (gsize)(last - first));
   blend_rows(aw_plane_row(reduced, j0) + first, aw_plane_row(reduced, j1) + first, v, blend, last - first);
   float shift = 0.5f / (float)factor - 0.5f, top = (float)(n - 1);
   for (int x = 0, block = x0 / factor, rest = x0 % factor; x < width; x++) {

@@ -179,7 +179,7 @@ guint32 aw_watershed(const float *value, const guint8 *mask, int width, int heig
 guint32 aw_flood_gaps(const float *value, const guint8 *mask, int width, int height, guint32 *label)
 {
   gsize n_all = (gsize)width * (gsize)height;
-  g_autofree guint8 *gap = g_new(guint8, n_all);
+  g_autofree guint8 *gap = g_new0(guint8, n_all);
   for (gsize i = 0; i < n_all; i++)
     gap[i] = mask[i] && !label[i];
   float lo = 0, hi = 0;

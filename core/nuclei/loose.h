@@ -14,7 +14,7 @@ typedef struct {
 } AwLooseImage;
 
 /* Reads, segments and measures one image of any size; nuclei in row order with ids from 1. `info` tells its size. */
-GPtrArray *aw_segment_file(const AwLooseImage *image, const AwSegmentSettings *settings, AwImageInfo *info,
+GPtrArray *aw_segment_file(const AwLooseImage *image, const AwSegmentSettings *segment, AwImageInfo *info,
                            GError **error);
 
 /* The masks as a label image: pixel value = id. */
