@@ -217,7 +217,7 @@ static void summarise(const Scan *scan, double pixel_um, AwStartSummary *s)
 static gboolean store(Scan *scan, double pixel_um, const AwStepContext *context, GError **error)
 {
   AwRecord *record = scan->record;
-  g_autofree char *now = aw_text_from_time((double)(g_get_real_time() / G_USEC_PER_SEC));
+  g_autofree char *now = aw_text_from_time(floor((double)g_get_real_time() / G_USEC_PER_SEC));
   AwPixelMap map = { { pixel_um, 0, 0, pixel_um }, AW_ORIGIN_ASSUMED, 0 };
   if (!aw_record_begin(record, context->who, error) || !aw_record_set_frames(record, scan->frames, error) ||
       !aw_record_set_fact(record, AW_FACT_CREATED_AT, now, error) ||
