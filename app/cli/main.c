@@ -2,11 +2,11 @@
 #include <cairo.h>
 #include <glib.h>
 #include <locale.h>
-#include <malloc.h>
 #include <pango/pango.h>
 #include <stdio.h>
 #include <string.h>
 
+#include "base/limits.h"
 #include "base/output.h"
 #include "cli/cli.h"
 #include "steps/versions.h"
@@ -64,19 +64,11 @@ static int run(int argc, char **argv)
   return CLI_USAGE;
 }
 
-/* Image planes come and go by the dozen; keeping their pages saves the kernel half of the work. */
-static void keep_memory(void)
-{
-  mallopt(M_MMAP_THRESHOLD, 32 << 20);
-  mallopt(M_TRIM_THRESHOLD, 256 << 20);
-  mallopt(M_TOP_PAD, 16 << 20);
-}
-
 int main(int argc, char **argv)
 {
-  keep_memory();
   setlocale(LC_ALL, "");
   aw_output_prepare_process();
+  aw_memory_prepare_process();
   setlocale(LC_MESSAGES, "C"); /* the libraries' words match ours */
   return cli_finish_stdout(run(argc, argv));
 }

@@ -1,6 +1,8 @@
 /* Aimwell - SPDX-License-Identifier: GPL-3.0-or-later */
 #include "base/limits.h"
 
+#include <malloc.h>
+
 #include <sys/mman.h>
 
 #include "base/error.h"
@@ -25,4 +27,11 @@ gpointer aw_try_alloc(gsize n, gsize size, const char *what, GError **error)
   if (block && n > 0 && size > 0)
     ask_for_large_pages(block, n * size);
   return block;
+}
+
+void aw_memory_prepare_process(void)
+{
+  mallopt(M_MMAP_THRESHOLD, 32 << 20);
+  mallopt(M_TRIM_THRESHOLD, 256 << 20);
+  mallopt(M_TOP_PAD, 16 << 20);
 }

@@ -19,4 +19,10 @@
 /* Allocates n x size bytes, filled with zeros; NULL and AW_ERROR_MEMORY when it cannot be had. `what` names it. */
 gpointer aw_try_alloc(gsize n, gsize size, const char *what, GError **error);
 
+/**
+ * To be called once by a program at its start: keeps the pages of freed memory for the next request. Image planes come
+ * and go by the dozen, and giving their pages back each time costs the kernel half as much as the work itself.
+ */
+void aw_memory_prepare_process(void);
+
 #endif

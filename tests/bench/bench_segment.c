@@ -5,6 +5,7 @@
 #include <string.h>
 #include <time.h>
 
+#include "base/limits.h"
 #include "nuclei/segment.h"
 
 /*
@@ -98,6 +99,7 @@ static double time_plain(const AwImage *image, int rounds)
 
 int main(int argc, char **argv)
 {
+  aw_memory_prepare_process();
   int rounds = argc > 1 ? (int)g_ascii_strtoll(argv[1], NULL, 10) : 10;
   g_autoptr(AwImage) image = draw_frame();
   guint32 n = 0;
