@@ -104,7 +104,7 @@ reference_src := $(sort $(wildcard tests/reference/*.c))
 reference_bin := $(patsubst tests/reference/%.c,$(BIN)/reference/%,$(reference_src))
 reference_run := $(sort $(wildcard tests/reference/test_*.py)) $(filter $(BIN)/reference/test_%,$(reference_bin))
 TAP := tests/tools/tap.py --logs $(BIN)/logs $(if $(TOTAL),--total $(TOTAL))
-ASAN_ENV := ASAN_OPTIONS=detect_leaks=1:strict_string_checks=1 UBSAN_OPTIONS=print_stacktrace=1 LSAN_OPTIONS=suppressions=tests/tools/lsan.supp
+ASAN_ENV := ASAN_OPTIONS=detect_leaks=1:strict_string_checks=1 UBSAN_OPTIONS=print_stacktrace=1 LSAN_OPTIONS=suppressions=$(CURDIR)/tests/tools/lsan.supp:print_suppressions=0
 
 $(BIN)/reference/%: $(OBJ)/tests/reference/%.o $(sup_lib) $(core_lib)
 	@mkdir -p $(@D); echo "LD $@"

@@ -175,10 +175,10 @@ int cli_join_ids(int argc, char **argv, const char *option)
     argv[out++] = argv[i];
     if (strcmp(argv[i], option) != 0 || i + 1 >= argc)
       continue;
-    GString *joined = g_string_new(argv[++i]);
+    g_autoptr(GString) joined = g_string_new(argv[++i]);
     while (i + 1 < argc && is_id_word(argv[i + 1]))
       g_string_append_printf(joined, ",%s", argv[++i]);
-    argv[out++] = g_string_free(joined, FALSE); /* lives as long as argv */
+    argv[out++] = (char *)(guintptr)g_intern_string(joined->str); /* lives as long as argv */
   }
   argv[out] = NULL;
   return out;
