@@ -5,6 +5,7 @@
 #include <cairo.h>
 #include <glib.h>
 
+#include "image/image.h"
 #include "record/record.h"
 
 /* All that a dish map shows; borrowed. */
@@ -29,5 +30,11 @@ gboolean aw_map_write(const AwMapContent *content, const char *path, int width_p
 
 /* The same onto a cairo context of that size. */
 void aw_map_draw(const AwMapContent *content, cairo_t *cr, double width_px, double height_px);
+
+/* The largest side of a stored overview that is shown: a damaged record must not claim gigabytes. */
+#define AW_MAX_OVERVIEW_SIDE_PX 8192
+
+/* The overview of a frame as an 8-bit image, or NULL when there is none that can be shown. Free with aw_image_free. */
+AwImage *aw_frame_picture(const AwFrame *frame);
 
 #endif

@@ -3,19 +3,19 @@
 #include <string.h>
 
 #include "figures/label.h"
+#include "figures/map.h"
 #include "figures/map_parts.h"
 #include "image/overview.h"
 
-#define MAX_OVERVIEW_SIDE_PX 8192
 #define MAX_SAMPLED 64 /* frames whose histogram sets the contrast of all */
 
 /* Overviews are darkened, so that bright outlines read on the brightest nucleus. */
 static const AwInk brightest = { 0.66, 0.68, 0.70, 1 };
 static const AwInk unseen = { 0.17, 0.19, 0.225, 1 }; /* a frame without a picture */
 
-/* The picture of a frame, or NULL when there is none that can be shown. The sides stand at a fixed place of a PNG and
+/* The sides stand at a fixed place of a PNG and
  * are looked at first: a damaged record must not claim gigabytes. */
-static AwImage *decode(const AwFrame *frame)
+AwImage *aw_frame_picture(const AwFrame *frame)
 {
   gsize n = 0;
   const guint8 *bytes = frame->overview ? g_bytes_get_data(frame->overview, &n) : NULL;
@@ -23,7 +23,7 @@ static AwImage *decode(const AwFrame *frame)
   if (n < 24)
     return NULL;
   memcpy(sides, bytes + 16, sizeof sides);
-  if (GUINT32_FROM_BE(sides[0]) > MAX_OVERVIEW_SIDE_PX || GUINT32_FROM_BE(sides[1]) > MAX_OVERVIEW_SIDE_PX)
+  if (GUINT32_FROM_BE(sides[0]) > AW_MAX_OVERVIEW_SIDE_PX || GUINT32_FROM_BE(sides[1]) > AW_MAX_OVERVIEW_SIDE_PX)
     return NULL;
   return aw_overview_decode(frame->overview, "overview", NULL);
 }
@@ -59,7 +59,7 @@ static void make_contrast(GPtrArray *frames, guint32 table[256])
   gint64 histogram[256] = { 0 };
   guint stride = frames->len / MAX_SAMPLED + 1;
   for (guint i = 0; i < frames->len; i += stride) {
-    g_autoptr(AwImage) image = decode(frames->pdata[i]);
+    g_autoptr(AwImage) image = aw_frame_picture(frames->pdata[i]);
     if (image)
       count_greys(image, histogram);
   }
@@ -102,7 +102,7 @@ static void draw_picture(const AwMapPage *page, const AwFrame *frame, const guin
   cairo_t *cr = page->cr;
   frame_rect(page, frame);
   aw_style_set_ink(cr, unseen);
-  g_autoptr(AwImage) image = decode(frame);
+  g_autoptr(AwImage) image = aw_frame_picture(frame);
   if (!image) {
     cairo_fill(cr);
     return;

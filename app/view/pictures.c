@@ -3,10 +3,10 @@
 
 #include <string.h>
 
+#include "figures/map.h"
 #include "figures/style.h"
 #include "image/overview.h"
 
-#define MAX_OVERVIEW_SIDE_PX 8192
 #define MAX_SAMPLED 64
 #define PIXELS_FROM 4.0 /* zoom from which pixels are shown as squares */
 
@@ -82,27 +82,13 @@ const AwContrast *aw_pictures_contrast(const AwPictures *pictures)
   return &pictures->contrast;
 }
 
-/* The sides stand at a fixed place of a PNG and are looked at first: a damaged record must not claim gigabytes. */
-static AwImage *decode(const AwFrame *frame)
-{
-  gsize n = 0;
-  const guint8 *bytes = frame->overview ? g_bytes_get_data(frame->overview, &n) : NULL;
-  guint32 sides[2];
-  if (n < 24)
-    return NULL;
-  memcpy(sides, bytes + 16, sizeof sides);
-  if (GUINT32_FROM_BE(sides[0]) > MAX_OVERVIEW_SIDE_PX || GUINT32_FROM_BE(sides[1]) > MAX_OVERVIEW_SIDE_PX)
-    return NULL;
-  return aw_overview_decode(frame->overview, "overview", NULL);
-}
-
 void aw_pictures_set_percentiles(AwPictures *pictures, double low_frac, double high_frac)
 {
   g_autoptr(GPtrArray) images = g_ptr_array_new_with_free_func((GDestroyNotify)aw_image_free);
   guint stride = pictures->frames->len / MAX_SAMPLED + 1;
   AwContrast shown = { 0, 255, 1, FALSE };
   for (guint i = 0; i < pictures->frames->len; i += stride) {
-    AwImage *image = decode(pictures->frames->pdata[i]);
+    AwImage *image = aw_frame_picture(pictures->frames->pdata[i]);
     if (image)
       g_ptr_array_add(images, image);
   }
@@ -129,8 +115,8 @@ static int overview_factor(const AwFrame *frame)
     return 0;
   memcpy(sides, bytes + 16, sizeof sides);
   guint32 side = MAX(GUINT32_FROM_BE(sides[0]), GUINT32_FROM_BE(sides[1]));
-  return side >= 1 && side <= MAX_OVERVIEW_SIDE_PX ? aw_overview_factor(frame->width_px, frame->height_px, (int)side)
-                                                   : 0;
+  return side >= 1 && side <= AW_MAX_OVERVIEW_SIDE_PX ? aw_overview_factor(frame->width_px, frame->height_px, (int)side)
+                                                      : 0;
 }
 
 /* How often the overview is halved for this zoom. */
@@ -145,7 +131,7 @@ static cairo_surface_t *overview(Draw *draw, int frame, int n_halvings)
   AwPictures *pictures = draw->pictures;
   AwTileKey key = { frame, -1 - n_halvings, 0, 0 };
   if (!aw_tile_cache_has(pictures->cache, key)) {
-    AwImage *image = draw->decodes_left > 0 ? decode(pictures->frames->pdata[frame]) : NULL;
+    AwImage *image = draw->decodes_left > 0 ? aw_frame_picture(pictures->frames->pdata[frame]) : NULL;
     draw->decodes_left -= draw->decodes_left > 0;
     for (int level = -1; image && level >= key.level; level--) {
       AwImage *half = level > key.level ? aw_tile_halve(image, NULL) : NULL;
